@@ -1,0 +1,1 @@
+"""Collision dynamics: classical paths, close coupling, closed forms; everything here is in atomic units."""

@@ -1,0 +1,1 @@
+"""Pair potentials: analytic forms, tables, fine-structure curves and the files that carry them."""
