@@ -61,9 +61,9 @@ READ = {
         cite="Lapatovich et al., J. Chem. Phys. 73, 5419 (1980), for the well; one-electron model for the wall",
         where="abstract, https://ouci.dntb.gov.ua/en/works/9JBqBgq9",
         note="Well 3.0(5) cm^-1 at 7.62(16) angstrom READ in the abstract, whose relation sign is lost (probably "
-        "approx. or >=). The wall is COMPUTED, not published: points up to 11.7 bohr are the one-electron model potential "
-        "(soft set), points from 14.2 bohr are the Tang-Toennies curve through the READ well with the C_n of this file, "
-        "between them the two are blended with weight sin^2.",
+        "approx. or >=). The wall is COMPUTED, not published: points up to 11.7 bohr are the one-electron model "
+        "potential (soft set), points from 14.2 bohr are the Tang-Toennies curve through the READ well with the C_n of "
+        "this file, between them the two are blended with weight sin^2.",
     ),
 }  # fmt: skip
 MODEL_CITE = "one-electron model-potential calculation (second Sigma state, soft electron-gas set), not published"

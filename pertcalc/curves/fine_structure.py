@@ -11,7 +11,10 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike
 
+from pertcalc.constants import HARTREE_CM1
 from pertcalc.curves.base import Array, Curve
+from pertcalc.curves.curveset import CurveSet
+from pertcalc.species import alkali
 
 
 def coupling(splitting: float) -> float:
@@ -137,3 +140,9 @@ def line_differences(X: Curve, A: Curve, B: Curve, R: ArrayLike, splitting: floa
         upper(sigma, pi, splitting) - a / 2 - ground,
         pi - ground,
     )
+
+
+def splitting_of(curves: CurveSet) -> float:
+    """P3/2 - P1/2 [hartree] of a curve set: its own override, else that of the species table."""
+    own = curves.splitting_cm1
+    return (alkali(curves.alkali).fine_structure_cm1.value if own is None else own) / HARTREE_CM1

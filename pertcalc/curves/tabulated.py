@@ -48,8 +48,8 @@ class Tabulated(SurveyedCurve):
             values.flags.writeable = False
         decay = math.log(V[0] / V[1]) / (R[1] - R[0])
         tail = Tail.through(float(R[-1]), float(V[-1]), self.C6, self.C8, self.C10)
-        end_slope = float(tail.with_derivative(R[-1])[1])
-        spline = CubicSpline(R, V, bc_type=((1, -decay * V[0]), (1, end_slope)))
+        slopes = np.array([-decay * V[0], tail.with_derivative(R[-1])[1]])
+        spline = CubicSpline(R, V, bc_type=((1, np.array(slopes[0])), (1, np.array(slopes[1]))))
         for name, value in (("R", R), ("V", V), ("decay", decay), ("_spline", spline), ("tail", tail)):
             object.__setattr__(self, name, value)
         found = survey(self)
