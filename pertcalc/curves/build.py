@@ -27,6 +27,8 @@ WELL_TOLERANCE = 0.03
 POSITION_TOLERANCE = 0.015
 # A wall lower than this [hartree] (1000 cm^-1) does not keep thermal atoms apart.
 MIN_WALL = 0.00456
+# Depths and distances beyond these [hartree, bohr] are a wrong unit.
+MAX_ENERGY, MAX_LENGTH = 1.0, 200.0
 
 
 @dataclass(slots=True)
@@ -41,8 +43,8 @@ class StateFields:
 
     def quantity(self, key: str, required: str = "", name: str = "") -> float | None:
         """A {value, sd, unit} field in atomic units; its sd becomes the uncertainty of De or Re."""
-        units = LENGTH_UNITS if key.startswith("R") else ENERGY_UNITS
-        found = self.fields.quantity(key, units, required)
+        units, high = (LENGTH_UNITS, MAX_LENGTH) if key.startswith("R") else (ENERGY_UNITS, MAX_ENERGY)
+        found = self.fields.quantity(key, units, high, required)
         if found is None:
             return None
         if found[1] is not None and name:
@@ -57,12 +59,17 @@ class StateFields:
                 self.checks[key] = value
         return De, Re
 
+    def leading(self) -> float | None:
+        """C6 [hartree bohr^6], required; the largest of any alkali with any atom are a few thousand."""
+        step = "give the C6 of the pair in atomic units"
+        return self.fields.number("C6_au", "hartree bohr^6", high=1e8, required=step)
+
     def dispersion(self) -> tuple[float, float, float] | None:
         """C6 (required, > 0), C8 and C10 (0 when absent), [hartree bohr^n]."""
-        C6 = self.fields.number("C6_au", "hartree bohr^6", required="give the C6 of the pair in atomic units")
+        C6 = self.leading()
         rest = []
-        for key, unit in (("C8_au", "hartree bohr^8"), ("C10_au", "hartree bohr^10")):
-            value = self.fields.number(key, unit, closed=True)
+        for key, unit, high in (("C8_au", "hartree bohr^8", 1e12), ("C10_au", "hartree bohr^10", 1e15)):
+            value = self.fields.number(key, unit, high=high, closed=True)
             rest.append(0.0 if key not in self.fields.data else value)
         if C6 is None or rest[0] is None or rest[1] is None:
             return None
@@ -71,7 +78,7 @@ class StateFields:
 
 def _tang_toennies(state: StateFields) -> Curve | None:
     table = state.fields
-    A = table.number("A_hartree", "hartree")
+    A = table.number("A_hartree", "hartree", high=1e8)
     b = table.number("b_per_bohr", "1/bohr", high=50.0)
     De, Re = state.well()
     dispersion = state.dispersion()
@@ -108,7 +115,7 @@ def _lennard_jones(state: StateFields) -> Curve | None:
 
 
 def _van_der_waals(state: StateFields) -> Curve | None:
-    C6 = state.fields.number("C6_au", "hartree bohr^6", required="give the C6 of the pair in atomic units")
+    C6 = state.leading()
     core = state.quantity("R_core")
     if C6 is None or (core is None and "R_core" in state.fields.data):
         return None
@@ -228,7 +235,7 @@ def read_limited(path: Path) -> bytes:
 
 def reason(error: Exception) -> str:
     """The plain words of an OSError or ValueError."""
-    return (getattr(error, "strerror", None) or str(error)).lower()
+    return getattr(error, "strerror", None) or str(error)
 
 
 BUILDERS: dict[str, Callable[[StateFields], Curve | None]] = {

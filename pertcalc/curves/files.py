@@ -6,6 +6,7 @@ The format is described in notes/curve-files.md. Every bad field of a file is re
 from __future__ import annotations
 
 import hashlib
+import re
 import tomllib
 from dataclasses import replace
 from functools import cache
@@ -20,6 +21,11 @@ from pertcalc.curves.schema import Table
 from pertcalc.errors import DataFileError, InputError
 from pertcalc.species import ALKALIS, SPECIES_GASES, alkali, noble_gas
 
+# Dotted keys of more parts than this are refused before parsing: the standard parser spends time and memory with their
+# square. The pattern itself is linear: it starts at word beginnings only and never gives a character back.
+_LONG_KEY = re.compile(
+    r"""(?<![\w-])(?:(?:[\w-]++|"(?:[^"\\\n]|\\.)*+"|'[^'\n]*+')[ \t]*+\.[ \t]*+){17}"""
+)
 UNCERTAINTY_KEYS = ("De", "Re", "C6", "C8", "C10")
 
 
@@ -129,7 +135,10 @@ def _parse(path: Path) -> tuple[dict[str, Any], bytes]:
     except (OSError, ValueError) as error:
         raise DataFileError(path, f"cannot be read: {reason(error)}; name a curve file (.toml)") from None
     try:
-        return tomllib.loads(raw.decode("utf-8")), raw
+        text = raw.decode("utf-8")
+        if _LONG_KEY.search(text):
+            raise RecursionError
+        return tomllib.loads(text), raw
     except UnicodeDecodeError:
         raise DataFileError(path, "is not UTF-8 text; save it as plain text") from None
     except RecursionError:

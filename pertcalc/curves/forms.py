@@ -74,7 +74,7 @@ class VanDerWaals(SurveyedCurve):
     """Pure ``V = -C6/R^6`` outside a hard core of radius R_core.
 
     Inside, with x = (R_core/R)^6 and D = C6/R_core^6, ``V = -D x + 100 D (x - 1)^2``. The added term has zero value and
-    zero slope at R_core, so V is C1 there; it turns V positive within 1.6 % of R_core. Fields: C6 [hartree bohr^6],
+    zero slope at R_core, so V is C1 there; it turns V positive within 1.7 % of R_core. Fields: C6 [hartree bohr^6],
     R_core [bohr].
     """
 

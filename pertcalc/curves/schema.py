@@ -11,6 +11,7 @@ from typing import Any
 from pertcalc import constants
 
 MAX_TEXT = 4000
+MAX_UNKNOWN = 20
 # One of each unit in hartree and in bohr.
 ENERGY_UNITS = {
     "hartree": 1.0,
@@ -20,13 +21,15 @@ ENERGY_UNITS = {
     "K": constants.KELVIN_HARTREE,
 }
 LENGTH_UNITS = {"bohr": 1.0, "angstrom": 1 / constants.BOHR_ANGSTROM}
+_WORD = re.compile(r"[A-Za-z0-9_-]{1,60}")
 _CONTROL = re.compile(r"[\x00-\x08\x0b-\x1f\x7f-\x9f]")
 
 
 def shown(value: Any) -> str:
     """A value as it may be printed in a message: its repr, control characters escaped, at most 60 characters."""
     if isinstance(value, dict):
-        return "{" + ", ".join(str(k)[:20] for k in list(value)[:4]) + ", ...}"[: 2 + 80 * (len(value) > 4)]
+        keys = ", ".join(shown(k)[:24] for k in list(value)[:4])
+        return f"{{{keys}{', ...' if len(value) > 4 else ''}}}"
     if isinstance(value, list):
         return f"[... {len(value)} items]" if len(value) > 4 else repr(value)[:60]
     try:
@@ -64,7 +67,9 @@ class Table:
     known: list[str] = field(default_factory=list)
 
     def path(self, key: str) -> str:
-        return f"{self.name}.{key}" if self.name else key
+        """Dotted name of a field; a key that is no plain word is quoted and cut."""
+        plain = key if _WORD.fullmatch(key) else shown(key)
+        return f"{self.name}.{plain}" if self.name else plain
 
     def note(self, key: str, rule: str) -> None:
         """Note a problem of one field, with its value when it has one."""
@@ -118,8 +123,10 @@ class Table:
             return number
         return None
 
-    def quantity(self, key: str, units: dict[str, float], required: str = "") -> tuple[float, float | None] | None:
-        """``{value, sd, unit}`` in the base unit (hartree or bohr) and its relative standard deviation, if given."""
+    def quantity(
+        self, key: str, units: dict[str, float], high: float, required: str = ""
+    ) -> tuple[float, float | None] | None:
+        """``{value, sd, unit}`` in the base unit (hartree or bohr), below ``high``, and its relative sd, if given."""
         data = self.take(key, required)
         if data is None:
             return None
@@ -133,6 +140,9 @@ class Table:
         unit = inner.text("unit", f"name one of {', '.join(units)}", tuple(units))
         inner.finish()
         if value is None or unit is None:
+            return None
+        if not value * units[unit] < high:
+            inner.note("value", f"must be below {high:g} {list(units)[0]}; check value and unit")
             return None
         return value * units[unit], None if sd is None else sd / value
 
@@ -148,6 +158,8 @@ class Table:
 
     def finish(self) -> None:
         """Note every key that nothing asked for, with the nearest known one."""
-        for key in self.data:
-            if key not in self.known:
-                self.note(key, f"unknown key;{did_you_mean(key, self.known)} known here: {', '.join(self.known)}")
+        unknown = [key for key in self.data if key not in self.known]
+        for key in unknown[:MAX_UNKNOWN]:
+            self.note(key, f"unknown key;{did_you_mean(key, self.known)} known here: {', '.join(self.known)}")
+        if len(unknown) > MAX_UNKNOWN:
+            self.problems.append(f"{self.name or 'file'}: {len(unknown) - MAX_UNKNOWN} more unknown keys")
