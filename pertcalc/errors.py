@@ -4,12 +4,24 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 from difflib import get_close_matches
+from typing import Any
 
 
 class PertcalcError(Exception):
     """Base of every error a user can cause; ``exit_code`` is what the command line ends with."""
 
     exit_code = 1
+
+    def __reduce__(self) -> tuple[Any, ...]:
+        """Pickle by message and attributes, whatever the arguments were: errors cross process borders."""
+        return _rebuilt, (type(self), str(self), self.__dict__)
+
+
+def _rebuilt(kind: type[PertcalcError], message: str, attributes: dict[str, Any]) -> PertcalcError:
+    error = kind.__new__(kind)
+    Exception.__init__(error, message)
+    error.__dict__.update(attributes)
+    return error
 
 
 class InputError(PertcalcError, ValueError):

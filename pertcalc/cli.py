@@ -1,0 +1,264 @@
+"""The command line: words only. The library computes, this module translates words and prints results."""
+
+from __future__ import annotations
+
+import errno
+import os
+import sys
+from typing import Any
+
+import click
+
+from pertcalc import __version__
+from pertcalc.cli_options import (
+    AnyGas,
+    Species,
+    Words,
+    checked_gas,
+    deliver,
+    one_format,
+    progress_bar,
+    rate_options,
+    result_options,
+)
+from pertcalc.errors import InputError, PertcalcError
+
+INTERRUPTED = 130
+
+
+class Friendly(click.Group):
+    """Turns every error a user can cause into one message on stderr and the exit code it carries."""
+
+    def invoke(self, ctx: click.Context) -> Any:
+        """Run the command; errors of the library leave as one ClickException."""
+        try:
+            return super().invoke(ctx)
+        except PertcalcError as error:
+            raise Shown(str(error), error.exit_code) from error
+        except KeyboardInterrupt as stop:
+            raise Shown("stopped by the user; nothing was finished.", INTERRUPTED) from stop
+        except OSError as error:
+            if error.errno == errno.EPIPE:
+                raise  # the reader left, as `head` does: click ends quietly
+            _drop_stdout()
+            where = f" {error.filename!r}" if error.filename else ""
+            raise Shown(f"cannot read or write{where}: {error.strerror or error}.", 1) from error
+
+
+class Shown(click.ClickException):
+    """One message on stderr with an exit code of its own."""
+
+    def __init__(self, message: str, exit_code: int):
+        super().__init__(message)
+        self.exit_code = exit_code  # type: ignore[misc]
+
+
+def _drop_stdout() -> None:
+    """Send what is still buffered nowhere, so that the flush at exit does not fail a second time."""
+    try:
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+    except (OSError, ValueError):
+        return  # stdout is no real file, then there is nothing to flush
+
+
+@click.group(cls=Friendly, context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 100})
+@click.version_option(__version__, prog_name="pertcalc")
+def cli() -> None:
+    """Collision rates of polarised alkali vapours (Li, Na, K, Rb, Cs) in noble buffer gases, from pair curves.
+
+    Widths and shifts of the D lines, relaxation of every multipole of the P levels and fine-structure transfer, with
+    errors, beside radiative decay, the Hanle field and published measurements. Start with:
+
+        pertcalc report Rb
+
+    Exit codes: 0 done, 1 bad data, 2 usage, 3 not converged, 4 a published check failed.
+    """
+
+
+@cli.command()
+@click.argument("alkali", type=Species("alkali"))
+@click.option("--gas", "gases", type=AnyGas("noble gas"), multiple=True, help="May be repeated. [default: all five]")
+@click.option("--temperature", type=Words("temperature", "K"), help='Of the cell, as "60 degC"; a bare number is K.')
+@click.option("--pressure", type=Words("pressure"), help='Of the gas at the fill, as "20 Torr".')
+@click.option(
+    "--fill-temperature", type=Words("temperature", "K"), help="At which the pressure was read. [default: 20 degC]"
+)
+@click.option("--field", type=Words("field"), help='Magnetic field, as "0.5 G".')
+@rate_options
+@click.option("--jobs", type=click.IntRange(min=1), help="Processes that share the gases. [default: all processors]")
+@result_options
+def report(
+    alkali: str,
+    gases: tuple[str, ...],
+    temperature: float | None,
+    pressure: float | None,
+    fill_temperature: float | None,
+    field: float | None,
+    method: str,
+    curve_file: str | None,
+    jobs: int | None,
+    as_json: bool,
+    as_csv: bool,
+    output: str | None,
+    force: bool,
+) -> None:
+    """The main job: every rate of ALKALI in each gas, in your cell, beside measurement.
+
+    Per gas: full width and shift of D1 and D2, loss of every multipole of P1/2 and P3/2, fine-structure transfer, the
+    ratio to radiative decay, the Hanle field with and without collisions, measured values, and what rules the levels.
+    A sealed cell keeps its density: the pressure counts at the fill temperature. Defaults are shown in the report.
+
+    \b
+    Example:
+        pertcalc report Rb --gas He --gas Ar --temperature "60 degC" --pressure "20 Torr" --field "0.5 G"
+    """
+    one_format(as_json, as_csv)
+    if output is not None:
+        _check_output(output, force)
+    from pertcalc.report.compute import compute_report, default_jobs
+    from pertcalc.report.request import make_request
+
+    request = make_request(
+        alkali,
+        [checked_gas(gas, curve_file) for gas in gases],
+        temperature_K=temperature,
+        pressure_torr=pressure,
+        fill_temperature_K=fill_temperature,
+        field_G=field,
+        method=method,
+        curves=curve_file,
+    )
+    with progress_bar(f"{request.alkali} in {', '.join(request.gases)}") as progress:
+        made = compute_report(request, jobs or default_jobs(), progress)
+    deliver(_rendered(made, as_json, as_csv), output, force)
+    if made.interrupted:
+        raise Shown(f"stopped by the user; not finished: {', '.join(made.missing)}.", INTERRUPTED)
+    if made.error is not None:
+        raise made.error
+
+
+def _rendered(made: Any, as_json: bool, as_csv: bool) -> str:
+    """A report in the format asked for."""
+    if as_json:
+        from pertcalc.report.as_json import dump, report_json
+
+        return dump(report_json(made))
+    if as_csv:
+        from pertcalc.report.rows import report_csv
+
+        return report_csv(made)
+    from pertcalc.report.report_text import report_text
+
+    return report_text(made)
+
+
+@cli.command()
+@click.argument("alkali", type=Species("alkali"))
+@click.argument("gas", type=AnyGas("noble gas"))
+@click.option(
+    "--temperature",
+    "temperatures",
+    type=Words("temperature", "K"),
+    multiple=True,
+    default=(300.0,),
+    show_default="300 K",
+    help='As 368 (kelvin) or "95 degC"; may be repeated.',
+)
+@rate_options
+@result_options
+def rates(
+    alkali: str,
+    gas: str,
+    temperatures: tuple[float, ...],
+    method: str,
+    curve_file: str | None,
+    as_json: bool,
+    as_csv: bool,
+    output: str | None,
+    force: bool,
+) -> None:
+    """Collision rates of ALKALI with GAS per unit gas density, at any number of temperatures.
+
+    Widths, shifts, multipole losses and transfers with numerical and model error and temperature exponent. With
+    --curves FILE, GAS may be any perturber that file names.
+
+    \b
+    Example:
+        pertcalc rates K Ar --temperature 368 --temperature "150 degC" --json
+    """
+    one_format(as_json, as_csv)
+    if output is not None:
+        _check_output(output, force)
+    gas = checked_gas(gas, curve_file)
+    from pertcalc.rates import collision_rates
+
+    with progress_bar(f"{alkali} + {gas}") as progress:
+        found = collision_rates(alkali, gas, list(temperatures), method=method, curves=curve_file, progress=progress)
+    if as_json:
+        from pertcalc.report.as_json import dump
+
+        text = dump(found.to_json())
+    elif as_csv:
+        from pertcalc.report.rows import rates_csv
+
+        text = rates_csv(found)
+    else:
+        from pertcalc.report.rates_text import rates_text
+
+        text = rates_text(found)
+    deliver(text, output, force)
+
+
+def _check_output(output: str, force: bool) -> None:
+    """Refuse an output file before the computation, not after it."""
+    from pertcalc.report.output import check_target
+
+    check_target(output, force)
+
+
+@cli.command()
+@click.argument("alkali", type=Species("alkali"), required=False)
+@click.argument("gas", type=Species("noble gas"), required=False)
+@click.option("--curves", "curve_file", metavar="FILE", help="Show this curve file instead of a default set.")
+@click.option("--plot", metavar="FILE", help="Draw one pair: FILE ends in .png or .svg.")
+@click.option("--check", "check_file", metavar="FILE", help="Report every problem of a curve file (exit 1 if any).")
+@result_options
+def curves(
+    alkali: str | None,
+    gas: str | None,
+    curve_file: str | None,
+    plot: str | None,
+    check_file: str | None,
+    as_json: bool,
+    as_csv: bool,
+    output: str | None,
+    force: bool,
+) -> None:
+    """The pair curves: all of them, those of ALKALI, or one pair in detail.
+
+    The list shows well depth De and position Re, C6 and the mark of the source. A plot shows V(R) of X, A1/2, A3/2 and
+    B1/2 and the differences that shape the D lines.
+
+    \b
+    Examples:
+        pertcalc curves
+        pertcalc curves Rb Ar --plot rb-ar.png
+        pertcalc curves --check my-curves.toml
+    """
+    one_format(as_json, as_csv)
+    for target in (output, plot):
+        if target is not None:
+            _check_output(target, force)
+    from pertcalc.report import curves_text
+
+    if check_file is not None:
+        if alkali or curve_file or plot:
+            raise InputError("--check FILE stands alone; give the file only.")
+        deliver(curves_text.checked(check_file, as_json, as_csv), output, force)
+        return
+    chosen = curves_text.choose(alkali, gas, curve_file)
+    if plot is not None:
+        place = curves_text.plot(chosen, plot)
+        click.echo(f"wrote {place}", err=True)
+        return
+    deliver(curves_text.shown(chosen, as_json, as_csv), output, force)

@@ -1,0 +1,114 @@
+"""What a report is asked for: alkali, gases, conditions of the cell, method, curves; checked once, at the door."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from os import PathLike
+
+from pertcalc.curves.curveset import CurveSet
+from pertcalc.curves.files import load, require_pair
+from pertcalc.errors import InputError
+from pertcalc.species import GASES, SPECIES_GASES, alkali_symbol, noble_gas_symbol
+from pertcalc.vapour.fill import (
+    DEFAULT_FIELD_G,
+    DEFAULT_FILL_TEMPERATURE_K,
+    DEFAULT_PRESSURE_TORR,
+    DEFAULT_TEMPERATURE_K,
+    Fill,
+)
+
+DEFAULT_METHOD = "semiclassical"
+
+
+@dataclass(frozen=True, slots=True)
+class Request:
+    """A checked order for a report.
+
+    ``alkali`` and ``gases`` symbols; ``fill`` the conditions; ``method`` of the rates; ``curves`` a set that replaces
+    the default one (then there is exactly one gas), else None; ``defaults`` names of the conditions nobody gave.
+    """
+
+    alkali: str
+    gases: tuple[str, ...]
+    fill: Fill
+    method: str
+    curves: CurveSet | None
+    defaults: tuple[str, ...]
+
+
+def make_request(
+    alkali: str,
+    gases: Sequence[str] = (),
+    *,
+    temperature_K: float | None = None,
+    pressure_torr: float | None = None,
+    fill_temperature_K: float | None = None,
+    field_G: float | None = None,
+    method: str = DEFAULT_METHOD,
+    curves: str | PathLike[str] | None = None,
+) -> Request:
+    """Fill in the defaults and check every value.
+
+    Parameters
+    ----------
+    alkali : str
+        Symbol of the alkali.
+    gases : sequence of str
+        Symbols of the gases; empty for He, Ne, Ar, Kr and Xe, or for the gas of ``curves``.
+    temperature_K, pressure_torr, fill_temperature_K, field_G : float or None
+        Conditions [K, Torr, K, G]; None takes the default of pertcalc.vapour.fill.
+    method : str
+        Name of the method of the rates.
+    curves : str, path or None
+        A curve file in place of the default set.
+
+    Returns
+    -------
+    Request
+
+    Raises
+    ------
+    UnknownNameError, InputError
+        A name or a value breaks its rule.
+    DataFileError
+        The curve file cannot be used.
+    """
+    symbol = alkali_symbol(alkali)
+    conditions = {
+        "temperature": (temperature_K, DEFAULT_TEMPERATURE_K[symbol]),
+        "pressure": (pressure_torr, DEFAULT_PRESSURE_TORR),
+        "fill temperature": (fill_temperature_K, DEFAULT_FILL_TEMPERATURE_K),
+        "field": (field_G, DEFAULT_FIELD_G),
+    }
+    T, p, T_fill, B = (default if given is None else given for given, default in conditions.values())
+    fill = Fill(pressure_torr=p, fill_temperature_K=T_fill, temperature_K=T, field_G=B)
+    curve_set = None if curves is None else load(curves)
+    chosen = _gases(gases, curve_set)
+    if curve_set is not None:
+        _check_pair(curve_set, symbol, chosen[0])
+    defaults = tuple(name for name, (given, _) in conditions.items() if given is None)
+    return Request(symbol, chosen, fill, method, curve_set, defaults)
+
+
+def _gases(names: Sequence[str], curves: CurveSet | None) -> tuple[str, ...]:
+    """Symbols in the order given, each once; a curve file brings its own gas."""
+    if curves is None:
+        return tuple(dict.fromkeys(noble_gas_symbol(name) for name in names)) or GASES
+    chosen = tuple(dict.fromkeys(names)) or (curves.noble_gas,)
+    if len(chosen) > 1:
+        raise InputError(
+            f"--gas = {', '.join(chosen)}: a curve file holds one pair, so give exactly one gas with --curves."
+        )
+    return chosen if chosen[0] == curves.noble_gas else (noble_gas_symbol(chosen[0]),)
+
+
+def _check_pair(curves: CurveSet, alkali: str, gas: str) -> None:
+    """InputError unless the file belongs to the alkali and the gas asked for."""
+    if gas in SPECIES_GASES:
+        require_pair(curves, alkali, gas)
+    elif curves.alkali != alkali:
+        raise InputError(
+            f"curves {curves.id!r} are for {curves.alkali}-{curves.noble_gas}, not {alkali}; name that alkali "
+            "or another file"
+        )

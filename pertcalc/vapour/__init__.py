@@ -1,0 +1,1 @@
+"""What a cell does with the rates: densities, fields, decay, and which of them wins."""
