@@ -162,7 +162,7 @@ def parse_quantity(kind: str, words: object, name: str | None = None, bare_unit:
     Returns
     -------
     value : float
-        In the border unit [unit of QUANTITIES[kind]]; finite, > 0 (field and power: >= 0).
+        In the border unit [K, Torr, cm^-3, gauss, cm or W]; finite, > 0 (field and power: >= 0).
 
     Raises
     ------

@@ -10,6 +10,7 @@ import math
 import subprocess
 import sys
 import time
+from pathlib import Path
 
 import numpy as np
 import pytest
@@ -214,4 +215,5 @@ def test_rates_in_laboratory_units():
 
 def test_importing_units_does_not_load_the_unit_library():
     code = "import sys, pertcalc.units; raise SystemExit('pint' in sys.modules)"
-    assert subprocess.run([sys.executable, "-c", code], check=False).returncode == 0
+    root = Path(units.__file__).parents[1]
+    assert subprocess.run([sys.executable, "-c", code], check=False, cwd=root).returncode == 0

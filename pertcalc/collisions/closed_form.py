@@ -161,6 +161,25 @@ class ClosedFormRates:
     reasons: dict[str, str] = field(default_factory=dict)
 
 
+def _lines(
+    kT: ArrayLike, reduced_mass: float, dC6: Mapping[str, float], dC12: Mapping[str, float]
+) -> tuple[dict[str, Array], dict[str, Array], dict[str, float]]:
+    """Width, shift and relative numerical errors of each line."""
+    missing = [f"dC12 has no entry for line {line}: add it or leave dC12 out" for line in dC6 if line not in dC12]
+    if missing:
+        raise InputError(missing)
+    fwhm, shift, errors = {}, {}, {}
+    for line, C6 in dC6.items():
+        if dC12[line] == 0:
+            fwhm[line], shift[line] = lindholm_foley_thermal(C6, kT, reduced_mass)
+            error = 1e-14 * fwhm[line]
+        else:
+            fwhm[line], shift[line], error = lennard_jones_line_thermal(C6, dC12[line], kT, reduced_mass)
+        for name, rate in (("fwhm", fwhm[line]), ("shift", np.abs(shift[line]))):
+            errors[f"{line} {name}"] = float(np.max(error / np.maximum(rate, 1e-300)))
+    return fwhm, shift, errors
+
+
 def closed_form_rates(
     kT: ArrayLike,
     reduced_mass: float,
@@ -193,19 +212,7 @@ def closed_form_rates(
     InputError
         Not finite, not positive, or a line of dC6 is missing in dC12.
     """
-    repulsion = dict.fromkeys(dC6, 0.0) if dC12 is None else dC12
-    missing = [f"dC12 has no entry for line {line}: add it or leave dC12 out" for line in dC6 if line not in repulsion]
-    if missing:
-        raise InputError(missing)
-    fwhm, shift, errors = {}, {}, {}
-    for line, C6 in dC6.items():
-        if repulsion[line] == 0:
-            fwhm[line], shift[line] = lindholm_foley_thermal(C6, kT, reduced_mass)
-            error = 1e-14 * fwhm[line]
-        else:
-            fwhm[line], shift[line], error = lennard_jones_line_thermal(C6, repulsion[line], kT, reduced_mass)
-        for name, rate in (("fwhm", fwhm[line]), ("shift", np.abs(shift[line]))):
-            errors[f"{line} {name}"] = float(np.max(error / np.maximum(rate, 1e-300)))
+    fwhm, shift, errors = _lines(kT, reduced_mass, dC6, dict.fromkeys(dC6, 0.0) if dC12 is None else dC12)
     loss: dict[int, Array | None] = {**van_der_waals_depolarisation(anisotropy, kT, reduced_mass)}
     for K, Lambda in DEPOLARISATION_CONSTANTS["P3/2"].items():
         errors[f"P3/2 K={K}"] = DEPOLARISATION_ERROR / Lambda

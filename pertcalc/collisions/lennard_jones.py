@@ -191,9 +191,7 @@ def lennard_jones_line(C6: float, C12: float, v: ArrayLike) -> tuple[Array, Arra
     return 4 * common * B, math.copysign(1.0, C6) * common * S
 
 
-def lennard_jones_line_thermal(
-    C6: float, C12: float, kT: ArrayLike, reduced_mass: float
-) -> tuple[Array, Array, Array]:
+def lennard_jones_line_thermal(C6: float, C12: float, kT: ArrayLike, reduced_mass: float) -> tuple[Array, Array, Array]:
     """Maxwell average of `lennard_jones_line` over v, alpha(v) included.
 
     Parameters

@@ -54,23 +54,14 @@ def recoupling_weights(J_final: float, J: float, k: int, L: float = 1, S: float 
         raise InputError(f"k = {k!r} must be an integer from 0 to {2 * min(J, J_final):g} for these levels")
     if any(six_j(L, j, S, j, L, 0) == 0 for j in (J, J_final)):
         raise InputError(f"J = {J:g} and {J_final:g} must both lie between |L-S| and L+S in whole steps")
-    sign = -1.0 if round(k + J + J_final) % 2 else 1.0
     ranks = range(round(2 * L) + 1)
-    return {
-        kappa: (-1) ** kappa
-        * sign
-        * (2 * J + 1)
-        * (2 * J_final + 1)
-        * (2 * kappa + 1)
-        * sum(
-            (2 * x + 1)
-            * six_j(J, J, k, J_final, J_final, x)
-            * six_j(L, L, kappa, L, L, x)
-            * six_j(L, J, S, J_final, L, x) ** 2
-            for x in ranks
-        )
-        for kappa in ranks
-    }
+    common = (-1.0) ** round(k + J + J_final) * (2 * J + 1) * (2 * J_final + 1)
+
+    def path_ranks(kappa: int) -> float:
+        spectator = [(2 * x + 1) * six_j(L, J, S, J_final, L, x) ** 2 * six_j(L, L, kappa, L, L, x) for x in ranks]
+        return sum(share * six_j(J, J, k, J_final, J_final, x) for x, share in zip(ranks, spectator, strict=True))
+
+    return {kappa: (-1) ** kappa * common * (2 * kappa + 1) * path_ranks(kappa) for kappa in ranks}
 
 
 def sudden_transfer(

@@ -79,9 +79,7 @@ def test_tail_numbers(b0, elastic, half_width, extra):
     assert born.half_width_tail(V, b0, DC, D, FAR, "P3/2") - half == pytest.approx(extra, abs=6e-4)
 
 
-@pytest.mark.parametrize(
-    ("x0", "h"), [(0.1, 0.999991), (0.3, 0.999351), (1, 0.951643), (2, 0.675353), (4, 0.135074)]
-)
+@pytest.mark.parametrize(("x0", "h"), [(0.1, 0.999991), (0.3, 0.999351), (1, 0.951643), (2, 0.675353), (4, 0.135074)])
 def test_adiabatic_tail_factor_numbers(x0, h):
     assert born.adiabatic_tail_factor(x0) == pytest.approx(h, abs=6e-7)
 

@@ -140,6 +140,7 @@ def test_random_partial_waves_recoupled_obey_the_list():
     one = {Jt: {key: float(key[0] == key[2] and key[1] == key[3]) for key in row} for Jt, row in S_spin.items()}
     one_orbital = {Lt: {key: float(key[1] == key[3]) for key in row} for Lt, row in S_orbital.items()}
     waves = range(0, top - 2)  # entrance waves all of whose total momenta are in the list
+
     def orbital_loss(k: int) -> float:
         return partial_wave_sum(one_orbital, 1, 1, k, waves) - partial_wave_sum(S_orbital, 1, 1, k, waves)
 
