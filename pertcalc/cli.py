@@ -75,7 +75,7 @@ def cli() -> None:
     """
 
 
-@cli.command()
+@cli.command(short_help="The main job: every rate of one alkali in each gas, in your cell.")
 @click.argument("alkali", type=Species("alkali"))
 @click.option("--gas", "gases", type=AnyGas("noble gas"), multiple=True, help="May be repeated. [default: all five]")
 @click.option("--temperature", type=Words("temperature", "K"), help='Of the cell, as "60 degC"; a bare number is K.')
@@ -152,7 +152,7 @@ def _rendered(made: Any, as_json: bool, as_csv: bool) -> str:
     return report_text(made)
 
 
-@cli.command()
+@cli.command(short_help="Rates of one pair per unit gas density.")
 @click.argument("alkali", type=Species("alkali"))
 @click.argument("gas", type=AnyGas("noble gas"))
 @click.option(
@@ -216,7 +216,7 @@ def _check_output(output: str, force: bool) -> None:
     check_target(output, force)
 
 
-@cli.command()
+@cli.command(short_help="The pair curves: list, details, plot, check of a file.")
 @click.argument("alkali", type=Species("alkali"), required=False)
 @click.argument("gas", type=Species("noble gas"), required=False)
 @click.option("--curves", "curve_file", metavar="FILE", help="Show this curve file instead of a default set.")

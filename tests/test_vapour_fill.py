@@ -113,7 +113,8 @@ def test_impact_number_is_two_pi_times_the_perturbers_in_the_collision(k, T, mas
 
 def test_twenty_torr_is_well_inside_the_impact_approximation_and_a_hundred_bar_is_not():
     mu = 27.2 * constants.AMU_AU  # Rb-Ar
-    low, high = (impact_parameter(4.2e-9, 333.15, mu, Fill(p, 293.15, 333.15, 0.0).density_cm3) for p in (20.0, 76000.0))
+    fills = (Fill(pressure, 293.15, 333.15, 0.0) for pressure in (20.0, 76000.0))
+    low, high = (impact_parameter(4.2e-9, 333.15, mu, fill.density_cm3) for fill in fills)
     assert low < IMPACT_LIMIT < high
 
 

@@ -45,7 +45,7 @@ def with_total(shown: str, numerical: float | None, model: float | None) -> str:
     if shown == UNKNOWN:
         return shown
     total = None if model is None else math.hypot(numerical or 0.0, model)
-    return f"{shown} +-{percent(total)}"
+    return f"{shown}+-{percent(total)}"
 
 
 def table(headers: Sequence[str], rows: Sequence[Sequence[str]], left: int = 1, indent: int = 2) -> list[str]:
