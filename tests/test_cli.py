@@ -22,7 +22,6 @@ from pertcalc.cli_options import METHODS, progress_bar
 from pertcalc.errors import NotConvergedError
 from tests.report_fakes import Broken, fake_rates, pertcalc_error
 
-
 REAL_RATES = pertcalc.rates.collision_rates
 
 

@@ -163,7 +163,8 @@ def test_text_fits_a_hundred_columns(symbol, conditions, method):
 
 def test_the_text_says_what_the_job_asks_for():
     text = report_text(made("Rb", ["Xe"], method="semiclassical"))
-    for words in ("MHz/Torr", "at the fill", "exponent", "over", "Hanle", "loss K=3", "transfer to P1/2", "g_J", "Cautions"):
+    asked = ("MHz/Torr", "at the fill", "exponent", "decay", "Hanle", "loss K=3", "transfer to P1/2", "g_J", "Cautions")
+    for words in asked:
         assert words in text, words
     line = next(line for line in text.splitlines() if line.startswith("  Xe   P3/2"))
     assert line.startswith("  Xe   P3/2 collisions (loss/decay K=1 ")

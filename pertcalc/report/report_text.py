@@ -91,14 +91,15 @@ def _sourced(value: Sourced, cite: Citations) -> str:
 def _overview(report: Report) -> list[str]:
     """One row per gas, then one line per gas on what rules the levels."""
     fill = report.request.fill
-    headers = ["gas", "D1 width\nMHz", "D1 shift\nMHz", "D2 width\nMHz", "D2 shift\nMHz", "loss/decay", "Hanle field\nG"]
+    lines_of = [f"{line} {what}\nMHz" for line in ("D1", "D2") for what in ("width", "shift")]
+    headers = ["gas", *lines_of, "loss/decay", "Hanle field\nG"]
     rows = [_overview_row(gas, fill.density_cm3) for gas in report.gases]
     lines = [
         _title("At this fill"),
         *table(headers, rows),
         *wrapped(
-            "COMPUTED; +- numerical and model error together (apart below). Full widths. Loss and Hanle field are those "
-            "of the alignment (K=2) of P3/2, the field with collisions."
+            "COMPUTED; +- numerical and model error together (apart below). Full widths. Loss and Hanle field are "
+            "those of the alignment (K=2) of P3/2, the field with collisions."
         ),
         "",
         *wrapped(f"What rules the excited levels. {comparable_note()}"),

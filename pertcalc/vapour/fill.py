@@ -24,7 +24,7 @@ DEFAULT_TEMPERATURE_K = {"Li": 623.15, "Na": 393.15, "K": 353.15, "Rb": 333.15, 
 DEFAULTS_ORIGIN = "common practice, no source"
 
 # Above this product of line width and collision duration the impact approximation is doubtful: collisions overlap.
-IMPACT_LIMIT = 0.1
+IMPACT_LIMIT = 0.25
 # Two effects closer than this factor are called comparable.
 COMPARABLE = 2.0
 
