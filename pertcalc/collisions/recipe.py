@@ -1,0 +1,81 @@
+"""Which family of paths answers for which rate of the semiclassical method: the empirical rule in one place.
+
+P1/2: the lower adiabatic curve. P3/2 starts on two curves: V_Pi for width, shift and rank 1; 2/3 V_Pi + 1/3 upper
+curve for rank 2; equal weights for rank 3 (weights on results, not on curves). Transfer and outflow: the lower curve
+at the mean energy of the two levels, both directions from one integral (detailed balance is exact). The outflow inside
+a multipole loss is replaced by that transfer. Reasons and numbers: notes/semiclassical.md.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+
+import numpy as np
+
+from pertcalc.collisions.semiclassical import CrossSections
+from pertcalc.thermal import Average, balanced_transfer, maxwell
+
+FAMILIES = ("lower", "pi", "upper")
+# Weights of (pi, upper) for rank K of P3/2.
+P32_WEIGHTS = {1: (1.0, 0.0), 2: (2 / 3, 1 / 3), 3: (0.5, 0.5)}
+
+
+def _sum(parts: list[tuple[float, Average]]) -> Average:
+    """Weighted sum of rates; exponents average with the rates as weights."""
+    rate = sum(weight * part.rate for weight, part in parts)
+    slope = sum(weight * part.rate * part.exponent for weight, part in parts)
+    return Average(rate, slope / rate if rate else 0.0)
+
+
+def thermal_rates(
+    tables: Mapping[str, CrossSections], splitting: float, temperature: float, reduced_mass: float
+) -> dict[tuple[str, ...], Average]:
+    """Every rate [au] at one temperature from the tables of the three families.
+
+    Parameters
+    ----------
+    tables : mapping
+        CrossSections by family ("lower", "pi", "upper").
+    splitting : float
+        [hartree].
+    temperature : float
+        [K].
+    reduced_mass : float
+        [electron masses].
+
+    Returns
+    -------
+    dict
+        Keys ("fwhm", line), ("shift", line), ("loss", level, K), ("transfer", level), ("gain", level, K).
+    """
+    lower, pi, upper = (tables[name] for name in FAMILIES)
+
+    def mean(table: CrossSections, name: str) -> Average:
+        return maxwell(table.energy, table.column(name), temperature, reduced_mass)
+
+    outflow = 2 * lower.column("P3/2.outflow")  # from P1/2 = twice that from P3/2
+    ratio = lower.column("gain1") / np.maximum(outflow, 1e-300)
+    plain = balanced_transfer(lower.energy, outflow, splitting, temperature, reduced_mass)
+    gain = balanced_transfer(lower.energy, outflow, splitting, temperature, reduced_mass, 1.0, ratio)
+    rates: dict[tuple[str, ...], Average] = {
+        ("transfer", "P1/2"): plain.up,
+        ("transfer", "P3/2"): plain.down,
+        ("gain", "P1/2", "1"): gain.up,
+        ("gain", "P3/2", "1"): gain.down,
+    }
+    for line, level, table in (("D1", "P1/2", lower), ("D2", "P3/2", pi)):
+        # The cross section belongs to the half width, an angular frequency.
+        rates["fwhm", line] = _sum([(2.0, mean(table, f"{level}.width"))])
+        rates["shift", line] = mean(table, f"{level}.shift")
+
+    def elastic(level: str, K: int, parts: list[tuple[float, CrossSections]], inflow: Average) -> Average:
+        terms = [(1.0, inflow)]
+        for weight, table in parts:
+            terms += [(weight, mean(table, f"{level}.loss{K}")), (-weight, mean(table, f"{level}.outflow"))]
+        return _sum(terms)
+
+    rates["loss", "P1/2", "1"] = elastic("P1/2", 1, [(1.0, lower)], plain.up)
+    for K, (on_pi, on_upper) in P32_WEIGHTS.items():
+        parts = [(w, t) for w, t in ((on_pi, pi), (on_upper, upper)) if w]
+        rates["loss", "P3/2", str(K)] = elastic("P3/2", K, parts, plain.down)
+    return rates
