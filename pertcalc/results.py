@@ -88,9 +88,7 @@ class CollisionRates:
             },
             "levels": {
                 level: {
-                    "multipole_loss_cm3_s": {
-                        str(K): c.listed(name) for K, c in self.multipole_loss[level].items()
-                    },
+                    "multipole_loss_cm3_s": {str(K): c.listed(name) for K, c in self.multipole_loss[level].items()},
                     "transfer_cm3_s": self.transfer[level].listed(name),
                     "multipole_transfer_cm3_s": {
                         str(K): c.listed(name) for K, c in self.multipole_transfer[level].items()

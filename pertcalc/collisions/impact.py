@@ -82,7 +82,7 @@ def adiabatic_phases(family: PathFamily, energy: float, b: Array) -> tuple[Array
     R = np.sqrt(turning_point**2 + y**2)
     line, anisotropy, pi = family.pair.table(R)
     driving = family.pair.path_potential(family.path, pi, anisotropy)
-    time = family.rate_of_time(np.float64(energy), b, R, y, driving) * 0.5 * last * weights[:, None]
+    time = family.rate_of_time(np.full(b.shape, energy), b, R, y, driving) * 0.5 * last * weights[:, None]
     curves = [family.pair.path_potential(k, pi, anisotropy) - pi for k in ("lower", "upper")] + [0.0]
     return np.stack([np.sum((line + curve) * time, axis=0) for curve in curves]), turning_point
 
