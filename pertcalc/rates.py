@@ -10,24 +10,24 @@ import numpy as np
 from numpy.typing import NDArray
 
 from pertcalc import species
-from pertcalc.collisions.pair import CollisionPair
-from pertcalc.collisions.recipe import FAMILIES, thermal_rates
-from pertcalc.collisions.semiclassical import CrossSections, cross_sections
-from pertcalc.constants import AMU_AU, AU_RATE_CM3_S, HARTREE_CM1, KELVIN_HARTREE
+from pertcalc.closed import closed_form_result
+from pertcalc.collisions.pair import CollisionPair, pair_of
+from pertcalc.collisions.recipe import Key, averaged, family_tables
+from pertcalc.collisions.semiclassical import CrossSections
+from pertcalc.constants import AU_RATE_CM3_S, KELVIN_HARTREE
 from pertcalc.curves import files
 from pertcalc.curves.curveset import CurveSet
 from pertcalc.errors import InputError, OutOfRangeError, UnknownNameError
+from pertcalc.model_error import model_errors
 from pertcalc.results import LEVEL_UNIT, LINE_UNIT, Coefficient, CollisionRates
-from pertcalc.thermal import HIGHEST, Average, effort, energy_grid
+from pertcalc.thermal import HIGHEST
 
 Array = NDArray[np.float64]
 Progress = Callable[[int, int], None]
-Key = tuple[str, ...]
 
 METHODS = ("semiclassical", "closed-form")
 # Below this the classical paths mean nothing: the de Broglie wavelength is as long as the collision [K].
 T_LOWEST, T_HIGHEST = 20.0, 2000.0
-STEP_SHARE = {"lower": 1.0, "pi": 0.6, "upper": 0.6}
 RANKS = {"P1/2": (1,), "P3/2": (1, 2, 3)}
 LINES = {"D1": "P1/2", "D2": "P3/2"}
 
@@ -60,25 +60,6 @@ def load_curves(alkali: str, noble_gas: str, curves: CurveSet | str | PathLike[s
     loaded = curves if isinstance(curves, CurveSet) else files.load(curves)
     files.require_pair(loaded, alkali, noble_gas)
     return loaded
-
-
-def pair_of(curves: CurveSet) -> CollisionPair:
-    """What the dynamics needs of a curve set: reduced mass, splitting, curves, dispersion differences."""
-    atom = species.alkali(curves.alkali)
-    mass = curves.mass_alkali_u or atom.mass_u.value
-    perturber = curves.mass_perturber_u or species.noble_gas(curves.noble_gas).mass_u.value
-    splitting = atom.fine_structure_cm1.value if curves.splitting_cm1 is None else curves.splitting_cm1
-    X, A, B = curves.X, curves.A, curves.B
-    isotropic = tuple((getattr(B, C) + 2 * getattr(A, C)) / 3 - getattr(X, C) for C in ("C6", "C8", "C10"))
-    return CollisionPair(
-        reduced_mass=mass * perturber / (mass + perturber) * AMU_AU,
-        splitting=splitting / HARTREE_CM1,
-        X=X,
-        A=A,
-        B=B,
-        isotropic=isotropic,  # type: ignore[arg-type]
-        anisotropy=B.C6 - A.C6,
-    )
 
 
 def check_walls(curves: CurveSet, temperatures: Array) -> None:
@@ -136,31 +117,9 @@ def collision_rates(
     check_walls(loaded, T)
     pair = pair_of(loaded)
     if method == "closed-form":
-        from pertcalc.closed import closed_form_result
-
         return closed_form_result(loaded, pair, T)
-    tables = semiclassical_tables(pair, T, progress)
-    return semiclassical_result(loaded, pair, T, tables)
-
-
-def semiclassical_tables(
-    pair: CollisionPair, temperatures: Array, progress: Progress | None = None
-) -> dict[str, CrossSections]:
-    """Cross sections of the three path families for these temperatures [K]."""
-    energy = energy_grid(temperatures)
-    density = effort(energy, temperatures, 0.35, 0.3)
-    fast = KELVIN_HARTREE * temperatures.min()
-    tables = {}
-    for i, family in enumerate(FAMILIES):
-
-        def report(done: int, total: int, i: int = i) -> None:
-            if progress is not None:
-                progress(i * total + done, len(FAMILIES) * total)
-
-        # Only the transfer, taken from the lower curve and from fast collisions, needs every step.
-        steps = np.where(energy > fast, 1.0, effort(energy, temperatures, 0.2, 0.5)) * STEP_SHARE[family]
-        tables[family] = cross_sections(pair, family, energy, density, steps, progress=report)
-    return tables
+    tables = family_tables(pair, T, progress)
+    return semiclassical_result(loaded, pair, T, tables, model_errors(loaded, T, progress))
 
 
 def _variants(tables: Mapping[str, CrossSections]) -> list[Mapping[str, CrossSections]]:
@@ -172,16 +131,14 @@ def _variants(tables: Mapping[str, CrossSections]) -> list[Mapping[str, CrossSec
     ]
 
 
-def averaged(pair: CollisionPair, temperatures: Array, tables: Mapping[str, CrossSections]) -> dict[Key, list[Average]]:
-    """Every thermal rate [au] at every temperature [K]."""
-    rows = [thermal_rates(tables, pair.splitting, float(T), pair.reduced_mass) for T in temperatures]
-    return {key: [row[key] for row in rows] for key in rows[0]}
-
-
 def semiclassical_result(
-    curves: CurveSet, pair: CollisionPair, temperatures: Array, tables: Mapping[str, CrossSections]
+    curves: CurveSet,
+    pair: CollisionPair,
+    temperatures: Array,
+    tables: Mapping[str, CrossSections],
+    model: Mapping[Key, Array],
 ) -> CollisionRates:
-    """Thermal rates with their numerical errors, from tables that were already computed."""
+    """Thermal rates with their numerical errors from tables already computed, and the model errors by rate key."""
     best = averaged(pair, temperatures, tables)
     others = [averaged(pair, temperatures, variant) for variant in _variants(tables)]
 
@@ -190,7 +147,7 @@ def semiclassical_result(
         changes = [np.abs(np.array([a.rate for a in other[key]]) - rate) for other in others]
         error = np.sum(changes, axis=0) / np.maximum(np.abs(rate), 1e-300)
         exponent = np.array([a.exponent for a in best[key]])
-        return Coefficient(unit, rate * AU_RATE_CM3_S, error, None, exponent)
+        return Coefficient(unit, rate * AU_RATE_CM3_S, error, model[key], exponent)
 
     work = {"paths": 0, "exponentials": 0, "energies": int(tables["lower"].energy.size)}
     for table in tables.values():

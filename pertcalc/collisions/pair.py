@@ -10,6 +10,10 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.interpolate import CubicSpline
 
+from pertcalc import species
+from pertcalc.constants import AMU_AU, HARTREE_CM1
+from pertcalc.curves.curveset import CurveSet
+
 Array = NDArray[np.float64]
 Potential = Callable[[Array], Array]
 
@@ -89,3 +93,35 @@ class CollisionPair:
             return self.path_potential(path, pi, anisotropy)
 
         return potential
+
+
+def pair_of(curves: CurveSet) -> CollisionPair:
+    """What the dynamics needs of a curve set: reduced mass, splitting, curves, dispersion differences.
+
+    Parameters
+    ----------
+    curves : CurveSet
+        Masses [u] and splitting [cm^-1] of the set override the species table.
+
+    Returns
+    -------
+    CollisionPair
+    """
+    atom = species.alkali(curves.alkali)
+    mass = curves.mass_alkali_u or atom.mass_u.value
+    perturber = curves.mass_perturber_u or species.noble_gas(curves.noble_gas).mass_u.value
+    splitting = atom.fine_structure_cm1.value if curves.splitting_cm1 is None else curves.splitting_cm1
+    X, A, B = curves.X, curves.A, curves.B
+    return CollisionPair(
+        reduced_mass=mass * perturber / (mass + perturber) * AMU_AU,
+        splitting=splitting / HARTREE_CM1,
+        X=X,
+        A=A,
+        B=B,
+        isotropic=(
+            (B.C6 + 2 * A.C6) / 3 - X.C6,
+            (B.C8 + 2 * A.C8) / 3 - X.C8,
+            (B.C10 + 2 * A.C10) / 3 - X.C10,
+        ),
+        anisotropy=B.C6 - A.C6,
+    )

@@ -8,14 +8,23 @@ a multipole loss is replaced by that transfer. Reasons and numbers: notes/semicl
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Iterable, Mapping
 
 import numpy as np
+from numpy.typing import NDArray
 
-from pertcalc.collisions.semiclassical import CrossSections
-from pertcalc.thermal import Average, balanced_transfer, maxwell
+from pertcalc.collisions.pair import CollisionPair
+from pertcalc.collisions.semiclassical import CrossSections, cross_sections
+from pertcalc.constants import KELVIN_HARTREE
+from pertcalc.thermal import LOG_SPACING, Average, balanced_transfer, effort, energy_grid, maxwell
+
+Array = NDArray[np.float64]
+Progress = Callable[[int, int], None]
+Key = tuple[str, ...]
 
 FAMILIES = ("lower", "pi", "upper")
+# Share of the standard steps: only the transfer, taken from the lower curve, needs every one of them.
+STEP_SHARE = {"lower": 1.0, "pi": 0.6, "upper": 0.6}
 # Weights of (pi, upper) for rank K of P3/2.
 P32_WEIGHTS = {1: (1.0, 0.0), 2: (2 / 3, 1 / 3), 3: (0.5, 0.5)}
 
@@ -29,7 +38,7 @@ def _sum(parts: list[tuple[float, Average]]) -> Average:
 
 def thermal_rates(
     tables: Mapping[str, CrossSections], splitting: float, temperature: float, reduced_mass: float
-) -> dict[tuple[str, ...], Average]:
+) -> dict[Key, Average]:
     """Every rate [au] at one temperature from the tables of the three families.
 
     Parameters
@@ -57,7 +66,7 @@ def thermal_rates(
     ratio = lower.column("gain1") / np.maximum(outflow, 1e-300)
     plain = balanced_transfer(lower.energy, outflow, splitting, temperature, reduced_mass)
     gain = balanced_transfer(lower.energy, outflow, splitting, temperature, reduced_mass, 1.0, ratio)
-    rates: dict[tuple[str, ...], Average] = {
+    rates: dict[Key, Average] = {
         ("transfer", "P1/2"): plain.up,
         ("transfer", "P3/2"): plain.down,
         ("gain", "P1/2", "1"): gain.up,
@@ -79,3 +88,53 @@ def thermal_rates(
         parts = [(w, t) for w, t in ((on_pi, pi), (on_upper, upper)) if w]
         rates["loss", "P3/2", str(K)] = elastic("P3/2", K, parts, plain.down)
     return rates
+
+
+def family_tables(
+    pair: CollisionPair,
+    temperatures: Array,
+    progress: Progress | None = None,
+    families: Iterable[str] = FAMILIES,
+    quick: bool = False,
+) -> dict[str, CrossSections]:
+    """Cross sections of the path families, on grids made for these temperatures.
+
+    Parameters
+    ----------
+    pair : CollisionPair
+    temperatures : ndarray, shape (n,)
+        [K].
+    progress : callable or None
+        Called with (done, total).
+    families : iterable of str
+        Which of FAMILIES.
+    quick : bool
+        Half the energies and fewer impact parameters and steps, without error estimate: about a sixth of the work,
+        for differences between curves.
+
+    Returns
+    -------
+    dict
+        CrossSections by family.
+    """
+    energy = energy_grid(temperatures, 2 * LOG_SPACING if quick else LOG_SPACING)
+    density = effort(energy, temperatures, 0.35, 0.3) * (0.6 if quick else 1.0)
+    # Fast collisions carry the transfer of widely split levels: they keep every step.
+    fast = energy > KELVIN_HARTREE * temperatures.min()
+    steps = np.where(fast, 1.0, effort(energy, temperatures, 0.2, 0.5)) * (0.8 if quick else 1.0)
+    names = list(families)
+    tables = {}
+    for i, family in enumerate(names):
+
+        def report(done: int, total: int, i: int = i) -> None:
+            if progress is not None:
+                progress(i * total + done, len(names) * total)
+
+        tables[family] = cross_sections(pair, family, energy, density, steps * STEP_SHARE[family], not quick, report)
+    return tables
+
+
+def averaged(pair: CollisionPair, temperatures: Array, tables: Mapping[str, CrossSections]) -> dict[Key, list[Average]]:
+    """Every thermal rate [au] at every temperature [K] from the tables of the three families."""
+    rows = [thermal_rates(tables, pair.splitting, float(T), pair.reduced_mass) for T in temperatures]
+    return {key: [row[key] for row in rows] for key in rows[0]}

@@ -1,0 +1,148 @@
+"""How far the rates can be trusted beyond the arithmetic: the curves' stated errors and the method's own.
+
+Curve part: every stated relative error (De, Re, C6 of X, A, B) is applied in turn, the rates are computed again on
+coarse grids, and the changes are added in quadrature. For the default sets that was done once, at three temperatures,
+by notes/scripts/make_model_errors.py; for a user's curves it is done on the spot. Method part: the largest deviation
+from quantum close coupling on the same curves, K-Ar. See notes/model-error.md.
+"""
+
+from __future__ import annotations
+
+import json
+from collections.abc import Callable, Mapping
+from dataclasses import replace
+from functools import cache
+from importlib import resources
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from pertcalc.collisions.pair import CollisionPair, pair_of
+from pertcalc.collisions.recipe import FAMILIES, Key, averaged, family_tables
+from pertcalc.curves.curveset import CurveSet
+from pertcalc.curves.deform import PARAMETERS, Deformed
+
+Array = NDArray[np.float64]
+Progress = Callable[[int, int], None]
+
+# Relative; tests/published/test_cross_check_k_ar.py holds the method to these.
+METHOD_ERRORS: dict[tuple[str, ...], float] = {
+    ("fwhm",): 0.03,
+    ("shift",): 0.04,
+    ("loss", "P1/2"): 0.04,
+    ("loss", "P3/2", "1"): 0.06,
+    ("loss", "P3/2", "2"): 0.06,
+    ("loss", "P3/2", "3"): 0.08,
+    ("transfer",): 0.15,
+    ("gain",): 0.15,
+}
+_DATA = "model_errors.json"
+
+
+def method_error(key: Key) -> float:
+    """Relative error of the semiclassical method for one rate key [1], shape ()."""
+    return next(error for start, error in METHOD_ERRORS.items() if key[: len(start)] == start)
+
+
+def deformed_pair(curves: CurveSet, state: str, parameter: str, change: float) -> CollisionPair:
+    """The colliding pair with one parameter of one curve moved.
+
+    Parameters
+    ----------
+    curves : CurveSet
+    state, parameter : str
+        "X", "A" or "B"; "De", "Re" or "C6".
+    change : float
+        Relative change [1].
+
+    Returns
+    -------
+    CollisionPair
+    """
+    pair = pair_of(curves)
+    moved = Deformed(curves.states[state].curve, **{parameter: change})
+    curve: dict[str, Any] = {state: moved}
+    pair = replace(pair, **curve)
+    if parameter != "C6":
+        return pair
+    extra = moved.new_c6 - curves.states[state].curve.C6
+    share = {"X": -1.0, "A": 2 / 3, "B": 1 / 3}[state]
+    turn = {"X": 0.0, "A": -1.0, "B": 1.0}[state]
+    first, *rest = pair.isotropic
+    return replace(pair, isotropic=(first + share * extra, rest[0], rest[1]), anisotropy=pair.anisotropy + turn * extra)
+
+
+def curve_errors(curves: CurveSet, temperatures: Array, progress: Progress | None = None) -> dict[Key, Array]:
+    """Relative errors of every rate from the stated errors of the curves.
+
+    Parameters
+    ----------
+    curves : CurveSet
+    temperatures : ndarray, shape (n,)
+        [K].
+    progress : callable or None
+        Called with (done, total) after every moved parameter.
+
+    Returns
+    -------
+    dict
+        Rate key to relative error [1], shape (n,).
+    """
+    moves = [
+        (state, parameter, curves.states[state].uncertainty[parameter])
+        for state in ("X", "A", "B")
+        for parameter in PARAMETERS
+        if curves.states[state].uncertainty.get(parameter)
+    ]
+    pair = pair_of(curves)
+    tables = family_tables(pair, temperatures, quick=True)
+    base = _rates(pair, temperatures, tables)
+    squares = {key: np.zeros(temperatures.shape) for key in base}
+    for i, (state, parameter, change) in enumerate(moves):
+        moved = deformed_pair(curves, state, parameter, change)
+        # The ground curve drives no path: the rates of the upper family stay as they are.
+        families = ("lower", "pi") if state == "X" else FAMILIES
+        found = _rates(moved, temperatures, {**tables, **family_tables(moved, temperatures, None, families, True)})
+        for key, rate in found.items():
+            squares[key] += ((rate - base[key]) / np.where(base[key] == 0, np.inf, base[key])) ** 2
+        if progress is not None:
+            progress(i + 1, len(moves))
+    return {key: np.sqrt(square) for key, square in squares.items()}
+
+
+def _rates(pair: CollisionPair, temperatures: Array, tables: Mapping) -> dict[Key, Array]:
+    return {
+        key: np.array([average.rate for average in row]) for key, row in averaged(pair, temperatures, tables).items()
+    }
+
+
+@cache
+def _shipped() -> dict:
+    text = (resources.files("pertcalc") / "data" / _DATA).read_text(encoding="utf-8")
+    return json.loads(text)
+
+
+def shipped_errors(curves: CurveSet, temperatures: Array) -> dict[Key, Array] | None:
+    """Curve errors of a default set, interpolated in temperature [K], or None if this file was not tabulated."""
+    entry = _shipped().get(curves.sha256)
+    if entry is None:
+        return None
+    return {
+        tuple(name.split(" ")): np.interp(temperatures, entry["temperatures_K"], values)
+        for name, values in entry["relative"].items()
+    }
+
+
+def model_errors(curves: CurveSet, temperatures: Array, progress: Progress | None = None) -> dict[Key, Array]:
+    """Relative model error of every semiclassical rate: curves and method in quadrature; arguments as `curve_errors`.
+
+    Returns
+    -------
+    dict
+        Rate key to relative error [1], shape (n,).
+    """
+    found = shipped_errors(curves, temperatures)
+    if found is None:
+        found = curve_errors(curves, temperatures, progress)
+    return {key: np.hypot(error, method_error(key)) for key, error in found.items()}
