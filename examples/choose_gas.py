@@ -1,8 +1,8 @@
 """Saltmarsh Instruments, an invented maker, chooses the buffer gas of its invented Curlew magnetometer.
 
 The Curlew pumps rubidium on D1 in a sealed cell with 40 Torr of gas. Two wishes: the gas must not widen D1 beyond
-700 MHz, or its laser no longer resolves the ground level; and at least half of the orientation that reaches P1/2 must be
-lost there before the atom decays. Run:  python examples/choose_gas.py
+700 MHz, or its laser no longer resolves the ground level; and at least half of the orientation that reaches P1/2 must
+be lost there before the atom decays. Run:  python examples/choose_gas.py
 """
 
 from __future__ import annotations

@@ -7,7 +7,7 @@ from pertcalc.report.compute import GasReport, Report, first
 from pertcalc.report.rates_text import reason_lines, value_with_errors
 from pertcalc.report.rows import LINE_QUANTITIES, FillRow, fill_rows
 from pertcalc.report.tables import UNKNOWN, WIDTH, number, percent, table, with_total, wrapped
-from pertcalc.report.words import CAUTIONS, READING, balance_line, comparable_note, quantity_words
+from pertcalc.report.words import CAUTIONS, READING, comparable_note, field_words, level_words, quantity_words
 from pertcalc.results import LEVEL_UNIT, LINE_UNIT, Coefficient
 from pertcalc.species import Sourced, alkali
 from pertcalc.units import mhz
@@ -102,12 +102,17 @@ def _overview(report: Report) -> list[str]:
             "those of the alignment (K=2) of P3/2, the field with collisions."
         ),
         "",
-        *wrapped(f"What rules the excited levels. {comparable_note()}"),
+        *wrapped(f"What rules the excited levels. {comparable_note()} {_fields(report.gases[0])}"),
     ]
     for gas in report.gases:
-        levels = "; ".join(balance_line(gas.balances[level]) for level in ("P3/2", "P1/2"))
+        levels = "; ".join(level_words(gas.balances[level]) for level in ("P3/2", "P1/2"))
         lines += wrapped(levels, " " * 7, f"  {gas.noble_gas:5}")
     return lines
+
+
+def _fields(gas: GasReport) -> str:
+    """Larmor frequency beside decay: the same in every gas."""
+    return "In this field " + ", ".join(f"{level} {field_words(b)}" for level, b in gas.balances.items()) + "."
 
 
 def _overview_row(gas: GasReport, density: float) -> list[str]:

@@ -8,7 +8,7 @@ from collections.abc import Sequence
 
 WIDTH = 100
 # Beyond these a number is written with an exponent.
-_PLAIN_FROM, _PLAIN_TO = 1e-3, 1e5
+_PLAIN_FROM, _PLAIN_TO = 1e-3, 1e4
 UNKNOWN = "-"
 
 

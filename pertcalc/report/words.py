@@ -39,15 +39,24 @@ def quantity_words(quantity: str, line_or_level: str, rank: int | None) -> str:
 
 def verdict_words(balance: LevelBalance) -> str:
     """What rules a level: one effect, or the effects within a factor COMPARABLE of each other."""
-    return " ~ ".join(balance.comparable)
+    return " ~ ".join(balance.comparable).replace("radiative decay", "decay")
+
+
+def level_words(balance: LevelBalance) -> str:
+    """What rules a level, with the ratio of collisional loss to radiative decay of every rank."""
+    ranks = ", ".join(f"K={K} {number(rate / balance.decay, 2)}" for K, rate in balance.losses.items())
+    known = f"loss/decay {ranks}" if ranks else "collisional loss unknown by this method"
+    return f"{balance.level} {verdict_words(balance)} ({known})"
+
+
+def field_words(balance: LevelBalance) -> str:
+    """The Larmor frequency of a level beside its radiative decay."""
+    return f"field/decay {number(balance.larmor / balance.decay, 2)}"
 
 
 def balance_line(balance: LevelBalance) -> str:
     """One sentence: what rules the level and how every rank of collisional loss compares with radiative decay."""
-    ranks = ", ".join(f"K={K} {number(rate / balance.decay, 2)}" for K, rate in balance.losses.items())
-    known = f"loss/decay {ranks}" if ranks else "collisional loss unknown by this method"
-    field = number(balance.larmor / balance.decay, 2)
-    return f"{balance.level} {verdict_words(balance)} ({known}; field/decay {field})"
+    return f"{level_words(balance)}; {field_words(balance)}"
 
 
 def comparable_note() -> str:
