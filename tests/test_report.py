@@ -130,8 +130,8 @@ def test_the_json_has_no_nan_and_carries_marks_errors_and_rates():
 def test_unknown_values_are_null_in_json_and_empty_in_csv():
     report = made("K", ["Ar"], method="closed-form")
     level = report_json(report)["gases"][0]["levels"]["P1/2"]
-    assert level["loss_s"] == {} and level["dominant"] == "radiative decay"
-    assert "unknown by this method" in level["sentence"]
+    assert level["loss_s"] == {} and level["dominant"] is None and level["comparable"] == []
+    assert level["sentence"].startswith("P1/2 undecided (collisional loss unknown by this method)")
     row = next(line for line in report_csv(report).splitlines() if ",multipole_loss,P1/2,1," in line)
     assert ",,cm^3 s^-1," in row and "cannot know it" in row
 

@@ -98,9 +98,10 @@ def test_rank_two_stands_for_the_collisions_where_it_is_known():
     assert ranks == [2, 1, None]
 
 
-def test_without_known_losses_decay_and_field_are_compared():
+def test_without_known_losses_nothing_is_called_the_winner():
     balance = level_balance("P1/2", 4e7, 2 / 3, {1: None}, CELL)
     assert balance.losses == {} and [name for name, _ in balance.ranking] == ["radiative decay", "field"]
+    assert balance.winner is None and balance.comparable == ()
 
 
 @given(st.floats(1e-11, 1e-8), st.floats(50, 1500), st.floats(1e3, 2e5), st.floats(1e15, 1e21))

@@ -38,8 +38,8 @@ def quantity_words(quantity: str, line_or_level: str, rank: int | None) -> str:
 
 
 def verdict_words(balance: LevelBalance) -> str:
-    """What rules a level: one effect, or the effects within a factor COMPARABLE of each other."""
-    return " ~ ".join(balance.comparable).replace("radiative decay", "decay")
+    """What rules a level: one effect, or those within a factor COMPARABLE of each other; else "undecided"."""
+    return " ~ ".join(balance.comparable).replace("radiative decay", "decay") or "undecided"
 
 
 def level_words(balance: LevelBalance) -> str:

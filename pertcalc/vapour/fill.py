@@ -105,13 +105,15 @@ class LevelBalance:
         return loss_error * self.losses[rank] / (self.decay + self.losses[rank])
 
     @property
-    def winner(self) -> str:
-        """The largest effect: "radiative decay", "collisions" or "field"."""
-        return self.ranking[0][0]
+    def winner(self) -> str | None:
+        """The largest effect: "radiative decay", "collisions" or "field"; None while the collisions are unknown."""
+        return None if self.rank is None else self.ranking[0][0]
 
     @property
     def comparable(self) -> tuple[str, ...]:
-        """The effects within a factor COMPARABLE of the largest, the largest itself included."""
+        """The effects within a factor COMPARABLE of the largest, itself included; none while collisions are unknown."""
+        if self.rank is None:
+            return ()
         largest = self.ranking[0][1]
         return tuple(name for name, rate in self.ranking if rate * COMPARABLE >= largest)
 
