@@ -15,7 +15,7 @@ from numpy.typing import NDArray
 
 from pertcalc.collisions.pair import CollisionPair
 from pertcalc.collisions.semiclassical import CrossSections, cross_sections
-from pertcalc.constants import KELVIN_HARTREE
+from pertcalc.constants import AMU_AU, KELVIN_HARTREE
 from pertcalc.thermal import LOG_SPACING, Average, balanced_transfer, effort, energy_grid, maxwell
 
 Array = NDArray[np.float64]
@@ -23,6 +23,8 @@ Progress = Callable[[int, int], None]
 Key = tuple[str, ...]
 
 FAMILIES = ("lower", "pi", "upper")
+# Reduced mass [u] from which the standard spacing of energies is dense enough.
+HEAVY = 10.0
 # Share of the standard steps: only the transfer, taken from the lower curve, needs every one of them.
 STEP_SHARE = {"lower": 1.0, "pi": 0.6, "upper": 0.6}
 # Weights of (pi, upper) for rank K of P3/2.
@@ -117,7 +119,9 @@ def family_tables(
     dict
         CrossSections by family.
     """
-    energy = energy_grid(temperatures, 2 * LOG_SPACING if quick else LOG_SPACING)
+    # In light pairs few partial waves take part and sigma(E) undulates: they are cheap and get more energies.
+    spacing = LOG_SPACING * min(1.0, float(np.sqrt(pair.reduced_mass / (HEAVY * AMU_AU))))
+    energy = energy_grid(temperatures, 2 * spacing if quick else spacing)
     density = effort(energy, temperatures, 0.35, 0.3) * (0.6 if quick else 1.0)
     # Fast collisions carry the transfer of widely split levels: they keep every step.
     fast = energy > KELVIN_HARTREE * temperatures.min()
