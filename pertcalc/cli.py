@@ -218,7 +218,7 @@ def _check_output(output: str, force: bool) -> None:
 
 @cli.command(short_help="The pair curves: list, details, plot, check of a file.")
 @click.argument("alkali", type=Species("alkali"), required=False)
-@click.argument("gas", type=Species("noble gas"), required=False)
+@click.argument("gas", type=AnyGas("noble gas"), required=False)
 @click.option("--curves", "curve_file", metavar="FILE", help="Show this curve file instead of a default set.")
 @click.option("--plot", metavar="FILE", help="Draw one pair: FILE ends in .png or .svg.")
 @click.option("--check", "check_file", metavar="FILE", help="Report every problem of a curve file (exit 1 if any).")
@@ -256,7 +256,7 @@ def curves(
             raise InputError("--check FILE stands alone; give the file only.")
         deliver(curves_text.checked(check_file, as_json, as_csv), output, force)
         return
-    chosen = curves_text.choose(alkali, gas, curve_file)
+    chosen = curves_text.choose(alkali, gas and checked_gas(gas, curve_file), curve_file)
     if plot is not None:
         place = curves_text.plot(chosen, plot)
         click.echo(f"wrote {place}", err=True)

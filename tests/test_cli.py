@@ -149,6 +149,30 @@ def pair_file() -> str:
     return str(default_folder() / "na-ar_default.toml")
 
 
+@pytest.fixture
+def foreign_file(tmp_path, pair_file) -> str:
+    """Curves of sodium with a perturber the species table does not have."""
+    with open(pair_file, encoding="utf-8") as file:
+        text = file.read()
+    text = text.replace('id = "na-ar_default"', 'id = "na-zz"').replace('noble_gas = "Ar"', 'noble_gas = "Zz"')
+    path = tmp_path / "na-zz.toml"
+    path.write_text(text + "\n[masses_u]\nperturber = 50.0\n")
+    return str(path)
+
+
+def test_a_perturber_of_the_users_own(foreign_file):
+    made = json.loads(run("report", "Na", "--curves", foreign_file, "--json").stdout)
+    assert [(gas["noble_gas"], gas["measured"]) for gas in made["gases"]] == [("Zz", [])]
+    assert run("rates", "Na", "Zz", "--curves", foreign_file).stdout.startswith("Na + Zz: ")
+    assert run("curves", "Na", "Zz", "--curves", foreign_file).stdout.startswith("na-zz: Na-Zz")
+    assert run("curves", "Na", "--curves", foreign_file).exit_code == 0
+    refused = run("report", "Rb", "--curves", foreign_file)
+    assert (refused.exit_code, refused.stderr) == (
+        2,
+        "Error: curves 'na-zz' are for Na-Zz, not Rb; name that alkali or another file\n",
+    )
+
+
 RATES_KEYS = {
     "schema",
     "alkali",

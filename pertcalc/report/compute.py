@@ -110,9 +110,9 @@ def rates_of_gas(
 
     At module level so that it pickles. Errors as pertcalc.rates.collision_rates.
     """
-    from pertcalc.rates import check_walls, collision_rates, load_curves, temperatures_of
+    from pertcalc.rates import check_walls, collision_rates, temperatures_of
 
-    loaded = load_curves(alkali, gas, curves)
+    loaded = load_default(alkali, gas) if curves is None else curves
     wanted = [temperatures[0]]
     for T in temperatures[1:]:
         with suppress(OutOfRangeError):

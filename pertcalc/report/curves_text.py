@@ -8,13 +8,13 @@ from pathlib import Path
 from typing import Any
 
 from pertcalc.curves.curveset import CurveSet
-from pertcalc.curves.files import load, load_default, require_pair
+from pertcalc.curves.files import load, load_default
 from pertcalc.curves.summary import CurveSummary, adiabatic_wells, describe, list_summaries, summarise
 from pertcalc.errors import InputError
 from pertcalc.report.as_json import dump
+from pertcalc.report.request import check_pair
 from pertcalc.report.rows import as_csv as csv_text
 from pertcalc.report.tables import number, table, wrapped
-from pertcalc.species import SPECIES_GASES
 
 Chosen = CurveSet | list[CurveSummary]
 
@@ -30,7 +30,7 @@ def choose(alkali: str | None, gas: str | None, curve_file: str | None) -> Chose
     if curve_file is not None:
         curves = load(curve_file)
         if alkali is not None:
-            require_pair(curves, alkali, gas or (curves.noble_gas if curves.noble_gas in SPECIES_GASES else "He"))
+            check_pair(curves, alkali, gas)
         return curves
     if alkali is not None and gas is not None:
         return load_default(alkali, gas)

@@ -9,7 +9,7 @@ from os import PathLike
 from pertcalc.curves.curveset import CurveSet
 from pertcalc.curves.files import load, require_pair
 from pertcalc.errors import InputError
-from pertcalc.species import GASES, SPECIES_GASES, alkali_symbol, noble_gas_symbol
+from pertcalc.species import GASES, alkali_symbol, noble_gas_symbol
 from pertcalc.vapour.fill import (
     DEFAULT_FIELD_G,
     DEFAULT_FILL_TEMPERATURE_K,
@@ -86,7 +86,7 @@ def make_request(
     curve_set = None if curves is None else load(curves)
     chosen = _gases(gases, curve_set)
     if curve_set is not None:
-        _check_pair(curve_set, symbol, chosen[0])
+        check_pair(curve_set, symbol, chosen[0])
     defaults = tuple(name for name, (given, _) in conditions.items() if given is None)
     return Request(symbol, chosen, fill, method, curve_set, defaults)
 
@@ -103,9 +103,9 @@ def _gases(names: Sequence[str], curves: CurveSet | None) -> tuple[str, ...]:
     return chosen if chosen[0] == curves.noble_gas else (noble_gas_symbol(chosen[0]),)
 
 
-def _check_pair(curves: CurveSet, alkali: str, gas: str) -> None:
-    """InputError unless the file belongs to the alkali and the gas asked for."""
-    if gas in SPECIES_GASES:
+def check_pair(curves: CurveSet, alkali: str, gas: str | None) -> None:
+    """InputError unless a curve set belongs to the alkali and, where it is given, the gas (any label of its own)."""
+    if gas is not None and gas != curves.noble_gas:
         require_pair(curves, alkali, gas)
     elif curves.alkali != alkali:
         raise InputError(
