@@ -58,8 +58,7 @@ def load_curves(alkali: str, noble_gas: str, curves: CurveSet | str | PathLike[s
     if curves is None:
         return files.load_default(alkali, noble_gas)
     loaded = curves if isinstance(curves, CurveSet) else files.load(curves)
-    files.require_pair(loaded, alkali, noble_gas)
-    return loaded
+    return files.for_pair(loaded, alkali, noble_gas)
 
 
 def check_walls(curves: CurveSet, temperatures: Array) -> None:

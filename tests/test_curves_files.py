@@ -405,9 +405,10 @@ def test_helium_3_has_the_curves_of_helium_and_its_own_mass() -> None:
     assert light.noble_gas == "3He" and heavy.mass_perturber_u is None
     # Mass of the helium-3 atom 3.01602932 u (AME2020, FROM MEMORY).
     assert light.mass_perturber_u == pytest.approx(3.01602932, abs=1e-6)
-    files.require_pair(heavy, "K", "3He")
+    assert files.for_pair(heavy, "K", "3He") == light
+    assert files.for_pair(heavy, "k", "he") is heavy
     with pytest.raises(InputError, match="are for K-He, not K-Ar"):
-        files.require_pair(heavy, "K", "Ar")
+        files.for_pair(heavy, "K", "Ar")
 
 
 @pytest.mark.parametrize("path", sorted(files.default_folder().glob("*")), ids=lambda p: p.name)

@@ -26,6 +26,7 @@ LAYERS = [
     "curves",
     "collisions",
     "closed",
+    "model_error",
     "rates",
     "vapour",
     "report",

@@ -114,6 +114,7 @@ class SurveyedCurve:
     _shape: Shape
 
     def with_derivative(self, R: ArrayLike) -> tuple[Array, Array]:
+        """V(R) [hartree] and dV/dR [hartree/bohr], shape of R [bohr]; every form has its own."""
         raise NotImplementedError
 
     def __call__(self, R: ArrayLike) -> Array:

@@ -23,9 +23,7 @@ from pertcalc.species import ALKALIS, SPECIES_GASES, alkali, noble_gas
 
 # Dotted keys of more parts than this are refused before parsing: the standard parser spends time and memory with their
 # square. The pattern itself is linear: it starts at word beginnings only and never gives a character back.
-_LONG_KEY = re.compile(
-    r"""(?<![\w-])(?:(?:[\w-]++|"(?:[^"\\\n]|\\.)*+"|'[^'\n]*+')[ \t]*+\.[ \t]*+){17}"""
-)
+_LONG_KEY = re.compile(r"""(?<![\w-])(?:(?:[\w-]++|"(?:[^"\\\n]|\\.)*+"|'[^'\n]*+')[ \t]*+\.[ \t]*+){17}""")
 UNCERTAINTY_KEYS = ("De", "Re", "C6", "C8", "C10")
 
 
@@ -114,9 +112,7 @@ def load_default(alkali_symbol: str, gas_symbol: str) -> CurveSet:
     """
     gas = noble_gas(gas_symbol)
     curves = _load_default(alkali(alkali_symbol).symbol, "He" if gas.symbol == "3He" else gas.symbol)
-    if gas.symbol == "3He":
-        return replace(curves, noble_gas="3He", mass_perturber_u=gas.mass_u.value)
-    return curves
+    return for_pair(curves, alkali_symbol, gas.symbol)
 
 
 def _default_id(alkali_symbol: str, gas_symbol: str) -> str:
@@ -235,12 +231,33 @@ def _uncertainty(fields: Table) -> dict[str, float]:
     return {key: value for key, value in found.items() if value is not None}
 
 
-def require_pair(curves: CurveSet, alkali_symbol: str, gas_symbol: str) -> None:
-    """InputError unless a set belongs to the pair (helium-3 may use the curves of helium)."""
-    wanted = (alkali(alkali_symbol).symbol, noble_gas(gas_symbol).symbol)
-    plain = {"3He": "He"}
-    if curves.alkali != wanted[0] or plain.get(curves.noble_gas, curves.noble_gas) != plain.get(wanted[1], wanted[1]):
+def for_pair(curves: CurveSet, alkali_symbol: str, gas_symbol: str) -> CurveSet:
+    """A set for the pair asked for: itself, or with helium-3's mass where helium's curves serve helium-3.
+
+    Parameters
+    ----------
+    curves : CurveSet
+    alkali_symbol, gas_symbol : str
+        A known alkali; a known gas or the set's own label of its perturber.
+
+    Returns
+    -------
+    CurveSet
+
+    Raises
+    ------
+    InputError
+        The set belongs to another pair.
+    UnknownNameError
+        Neither the species table nor the set knows the gas.
+    """
+    own = gas_symbol.strip().lower() == curves.noble_gas.lower()
+    wanted = (alkali(alkali_symbol).symbol, curves.noble_gas if own else noble_gas(gas_symbol).symbol)
+    if wanted == (curves.alkali, "3He") and curves.noble_gas == "He":
+        return replace(curves, noble_gas="3He", mass_perturber_u=noble_gas("3He").mass_u.value)
+    if (curves.alkali, curves.noble_gas) != wanted:
         raise InputError(
             f"curves {curves.id!r} are for {curves.alkali}-{curves.noble_gas}, not {wanted[0]}-{wanted[1]}; "
             "name that pair or another file"
         )
+    return curves

@@ -20,7 +20,7 @@ from pertcalc.report.comparison import Comparison, compare, known_measurements
 from pertcalc.report.parallel import Outcome, Progress, run_all, worker_pool
 from pertcalc.report.request import Request
 from pertcalc.results import Coefficient, CollisionRates
-from pertcalc.species import alkali
+from pertcalc.species import SPECIES_GASES, alkali, noble_gas
 from pertcalc.vapour.fill import IMPACT_LIMIT, LevelBalance, impact_parameter, level_balance
 
 LEVELS = ("P1/2", "P3/2")
@@ -86,9 +86,10 @@ def compute_report(
     PertcalcError
         Not one gas could be computed; the error of the first.
     """
+    # Heavy gases take longest: started first, they do not leave the other workers idle at the end.
     tasks = {
         gas: (request.alkali, gas, _temperatures(request, gas), request.method, request.curves)
-        for gas in request.gases
+        for gas in sorted(request.gases, key=_weight, reverse=True)
     }
     workers_wanted = min(jobs, len(tasks))
     own_pool = executor is None and workers_wanted > 1
@@ -96,6 +97,11 @@ def compute_report(
     with pool as workers:
         outcome = run_all(rates_of_gas, tasks, workers, progress)
     return _assemble(request, outcome)
+
+
+def _weight(gas: str) -> float:
+    """Atomic mass [u]; that of a user's own perturber does not matter, it comes alone."""
+    return noble_gas(gas).mass_u.value if gas in SPECIES_GASES else 0.0
 
 
 def rates_of_gas(
@@ -198,4 +204,3 @@ def _fill_warnings(impact: float) -> tuple[str, ...]:
         "approximation and binary collisions are doubtful; lines become asymmetric and rates stop being proportional "
         "to density. Read the numbers at the fill as orders of magnitude, or lower the pressure.",
     )
-

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from os import PathLike
 
 from pertcalc.curves.curveset import CurveSet
-from pertcalc.curves.files import load, require_pair
+from pertcalc.curves.files import for_pair, load
 from pertcalc.errors import InputError
 from pertcalc.species import GASES, alkali_symbol, noble_gas_symbol
 from pertcalc.vapour.fill import (
@@ -105,10 +105,4 @@ def _gases(names: Sequence[str], curves: CurveSet | None) -> tuple[str, ...]:
 
 def check_pair(curves: CurveSet, alkali: str, gas: str | None) -> None:
     """InputError unless a curve set belongs to the alkali and, where it is given, the gas (any label of its own)."""
-    if gas is not None and gas != curves.noble_gas:
-        require_pair(curves, alkali, gas)
-    elif curves.alkali != alkali:
-        raise InputError(
-            f"curves {curves.id!r} are for {curves.alkali}-{curves.noble_gas}, not {alkali}; name that alkali "
-            "or another file"
-        )
+    for_pair(curves, alkali, gas or curves.noble_gas)
