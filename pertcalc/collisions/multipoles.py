@@ -34,11 +34,12 @@ def level_blocks(scattering: Scattering) -> tuple[NDArray, NDArray, NDArray]:
     low = np.zeros((n, 2, 2), dtype=complex)
     high = np.zeros((n, 4, 4), dtype=complex)
     cross = np.zeros((n, 4, 2), dtype=complex)
-    # Rows of P3/2 that a block holds: A has m = 3/2 and -1/2, B has m = -3/2 and 1/2.
-    for block, rows, m_low in ((A, (0, 2), 1), (B, (3, 1), 0)):
+    # Rows of P3/2 that a block holds: A has m = 3/2 and -1/2, B has m = -3/2 and 1/2. B is the mirror image of A, and
+    # the image of |1/2, -1/2> is minus |1/2, 1/2> in the phases of Condon and Shortley.
+    for block, rows, m_low, sign in ((A, (0, 2), 1, 1), (B, (3, 1), 0, -1)):
         low[:, m_low, m_low] = block[:, 2, 2]
         for i, row in enumerate(rows):
-            cross[:, row, m_low] = block[:, i, 2]
+            cross[:, row, m_low] = sign * block[:, i, 2]
             for j, column in enumerate(rows):
                 high[:, row, column] = block[:, i, j]
     return low, high, cross

@@ -36,9 +36,11 @@ LINGERING = 10.0
 STEPS_MOST = 4000
 # Beyond the last place where |D| is WEAK of the splitting the levels follow adiabatically; their coupling is there
 # switched off over WINDOW turns of the splitting (to e^-20 of what it could excite) and replaced by its second-order
-# shift, so that the splitting need no longer be resolved.
+# shift, so that the splitting need no longer be resolved. ONSET widths further in than the middle of the window the
+# coupling is whole to 1e-8.
 WEAK = 0.05
 WINDOW = 9.0
+ONSET = 4.0
 _PROBES = 14
 # Paths stepped together: both blocks of one chunk fill the level-2 cache of common machines.
 CHUNK = 1024
@@ -77,11 +79,11 @@ class _Paths:
     @classmethod
     def of(cls, family: PathFamily, energy: Array, b: Array, turning_point: Array) -> _Paths:
         speed = family.speed(energy)
-        splitting = max(family.pair.splitting, 1e-12)
-        softness = WINDOW * speed / splitting
-        return cls(
-            family, energy, b, turning_point, speed, family.pair.last_strong_coupling(WEAK) + 3 * softness, softness
-        )
+        # Without splitting the levels are never released, at any distance.
+        splitting = family.pair.splitting
+        softness = WINDOW * speed / (splitting or 1.0)
+        release = family.pair.last_strong_coupling(WEAK) + ONSET * softness if splitting else np.full(b.shape, np.inf)
+        return cls(family, energy, b, turning_point, speed, release, softness)
 
     def some(self, index: NDArray[np.intp]) -> _Paths:
         arrays = (self.energy, self.b, self.turning_point, self.speed, self.release, self.softness)
@@ -198,8 +200,9 @@ def _scatter_chunk(paths: _Paths, step_factor: Array) -> tuple[ComplexArray, Arr
 def _hamiltonian(splitting: float, time: Array, turn: Array, anisotropy: Array, coupling: Array) -> Symmetric:
     """Elements 11, 22, 33, 12, 13, 23 of H dt of both blocks, each shape (..., 2 n) [radian]."""
     a = splitting / 1.5
-    # What the coupling that is switched off would do in second order, to P3/2 (plus) and P1/2 (minus).
-    shift = (1 - coupling**2) * anisotropy**2 / np.maximum(splitting * time, 1e-30) * _N[2] ** 2
+    # What the coupling that is switched off would do in second order, to P3/2 (plus) and P1/2 (minus); where the
+    # difference is not small it is still coupled, and the square root only keeps the missing 1e-8 from counting.
+    shift = (1 - coupling**2) * anisotropy**2 / np.hypot(splitting * time + 1e-30, anisotropy) * _N[2] ** 2
     aligned = [anisotropy * _N[i] * _N[j] + shift * _N[i] * _N[j] for i, j in ((0, 0), (1, 1), (0, 1))]
     upper, lower = 0.5 * a * time, anisotropy * _N[2] ** 2 - shift * (_N[0] ** 2 + _N[1] ** 2) - a * time
     first, second, mixed = aligned[0] + upper, aligned[1] + upper, aligned[2]
