@@ -22,7 +22,7 @@ LOWEST, HIGHEST = 0.03, 14.0
 LOG_SPACING = 0.36
 
 
-def energy_grid(temperatures: Array, spacing: float = LOG_SPACING) -> Array:
+def energy_grid(temperatures: Array, spacing: float = LOG_SPACING, highest: float = HIGHEST) -> Array:
     """Kinetic energies [hartree] for temperatures [K], geometric, shape (n,), n odd.
 
     Parameters
@@ -31,9 +31,11 @@ def energy_grid(temperatures: Array, spacing: float = LOG_SPACING) -> Array:
         [K].
     spacing : float
         Step of ln E [1].
+    highest : float
+        Last energy in units of kT of the hottest temperature [1].
     """
     low = LOWEST * temperatures.min() * KELVIN_HARTREE
-    high = HIGHEST * temperatures.max() * KELVIN_HARTREE
+    high = highest * temperatures.max() * KELVIN_HARTREE
     intervals = 2 * int(np.ceil(np.log(high / low) / spacing / 2))
     return np.geomspace(low, high, intervals + 1)
 

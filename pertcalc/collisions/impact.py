@@ -41,11 +41,6 @@ class ImpactGrid:
     last: float
 
 
-def weisskopf_radius(speed: float, c6: float) -> float:
-    """Impact parameter [bohr] at which the straight-path phase of -c6/R^6 [au] is one radian at `speed` [au]."""
-    return float((3 * np.pi * abs(c6) / (8 * speed)) ** 0.2)
-
-
 def _scan_points(family: PathFamily, energy: float, last: float) -> Array:
     """Rising impact parameters [bohr] of the scan: even, with geometric clusters on both sides of orbiting."""
     b = [np.linspace(0.0, last, _SCAN_POINTS)]

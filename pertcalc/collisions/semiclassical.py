@@ -13,9 +13,9 @@ import numpy as np
 from numpy.typing import NDArray
 
 from pertcalc.collisions import born_tails
-from pertcalc.collisions.impact import ImpactGrid, impact_grid, weisskopf_radius
+from pertcalc.collisions.impact import ImpactGrid, impact_grid
 from pertcalc.collisions.multipoles import INDEX, OBSERVABLES, observables
-from pertcalc.collisions.pair import CollisionPair
+from pertcalc.collisions.pair import R_END, CollisionPair
 from pertcalc.collisions.paths import PathFamily
 from pertcalc.collisions.scattering import scatter
 
@@ -25,6 +25,8 @@ Progress = Callable[[int, int], None]
 # The step error is measured on every fourth path, repeated with this many times the steps: what changes is nearly all
 # of the error. (Fewer steps would say nothing about a tiny transfer: its error falls exponentially.)
 FINER_STEPS = 1.4
+# Phase of -C6/R^6 on a straight path, over C6/(v b^5).
+PHASE_OF_C6 = 3 * np.pi / 8
 # A grid never stops closer than this [bohr]: pairs whose dispersion differences cancel still collide.
 RADIUS_LEAST = 8.0
 
@@ -68,8 +70,26 @@ class CrossSections:
 
 
 def reach(pair: CollisionPair, speed: float) -> float:
-    """Weisskopf radius of the strongest of the dispersion differences at `speed` [au], shape () [bohr]."""
-    return max(weisskopf_radius(speed, pair.isotropic[0]), weisskopf_radius(speed, pair.anisotropy), RADIUS_LEAST)
+    """Weisskopf radius of the actual curves: the outermost R at which a straight path turns a phase of one radian.
+
+    For a pure -C6/R^6 difference it is (3 pi C6/8 v)^(1/5); the repulsive B curves of helium reach further than their C6.
+
+    Parameters
+    ----------
+    pair : CollisionPair
+    speed : float
+        Relative speed [au].
+
+    Returns
+    -------
+    float
+        [bohr].
+    """
+    R = np.geomspace(4.0, 0.5 * R_END, 800)
+    line, difference, _ = pair.table(R)
+    phase = PHASE_OF_C6 * np.maximum(np.abs(line + difference / 3), np.abs(difference)) * R / speed
+    strong = np.flatnonzero(phase >= 1)
+    return max(float(R[strong[-1]]) if strong.size else 0.0, RADIUS_LEAST)
 
 
 def tails(pair: CollisionPair, speed: float, last: float) -> Array:
