@@ -10,11 +10,10 @@ from typing import Any, TypeVar
 import click
 from click.shell_completion import CompletionItem
 
-from pertcalc import __version__
 from pertcalc.errors import InputError, UnknownNameError
+from pertcalc.names import METHODS
 
 Command = TypeVar("Command", bound=Callable[..., Any])
-METHODS = ("semiclassical", "closed-form")
 
 
 class Species(click.ParamType):
@@ -69,11 +68,7 @@ class Method(click.ParamType):
     name = "method"
 
     def convert(self, value: Any, param: click.Parameter | None, ctx: click.Context | None) -> str:
-        """Return the name; InputError for a method of another version or no method at all."""
-        if value == "quantum":
-            raise InputError(
-                f"method 'quantum' is not part of version {__version__}; use {' or '.join(METHODS)}."
-            )
+        """Return the name; UnknownNameError for no method of ours."""
         if value not in METHODS:
             raise UnknownNameError("method", str(value), METHODS)
         return str(value)

@@ -19,7 +19,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from pertcalc.collisions.pair import CollisionPair, pair_of
-from pertcalc.collisions.recipe import FAMILIES, Key, averaged, family_tables
+from pertcalc.collisions.recipe import FAMILIES, Key, averaged, family_tables, thermal_rates
 from pertcalc.curves.curveset import CurveSet
 from pertcalc.curves.deform import PARAMETERS, Deformed
 
@@ -113,7 +113,8 @@ def curve_errors(curves: CurveSet, temperatures: Array, progress: Progress | Non
 
 def _rates(pair: CollisionPair, temperatures: Array, tables: Mapping) -> dict[Key, Array]:
     return {
-        key: np.array([average.rate for average in row]) for key, row in averaged(pair, temperatures, tables).items()
+        key: np.array([average.rate for average in row])
+        for key, row in averaged(thermal_rates, pair, temperatures, tables).items()
     }
 
 
@@ -134,8 +135,20 @@ def shipped_errors(curves: CurveSet, temperatures: Array) -> dict[Key, Array] | 
     }
 
 
-def model_errors(curves: CurveSet, temperatures: Array, progress: Progress | None = None) -> dict[Key, Array]:
-    """Relative model error of every semiclassical rate: curves and method in quadrature; arguments as `curve_errors`.
+def model_errors(
+    curves: CurveSet, temperatures: Array, method: str = "semiclassical", progress: Progress | None = None
+) -> dict[Key, Array]:
+    """Relative model error of every rate: that of the curves and, for the semiclassical method, its own in quadrature.
+
+    Parameters
+    ----------
+    curves : CurveSet
+    temperatures : ndarray, shape (n,)
+        [K].
+    method : str
+        "semiclassical" or "quantum", which adds nothing: it is exact on its curves.
+    progress : callable or None
+        Called with (done, total) when the errors of the curves must be computed.
 
     Returns
     -------
@@ -145,4 +158,5 @@ def model_errors(curves: CurveSet, temperatures: Array, progress: Progress | Non
     found = shipped_errors(curves, temperatures)
     if found is None:
         found = curve_errors(curves, temperatures, progress)
-    return {key: np.hypot(error, method_error(key)) for key, error in found.items()}
+    own = method_error if method == "semiclassical" else (lambda key: 0.0)
+    return {key: np.hypot(error, own(key)) for key, error in found.items()}

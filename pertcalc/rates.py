@@ -11,23 +11,29 @@ from numpy.typing import NDArray
 
 from pertcalc import species
 from pertcalc.closed import closed_form_result
+from pertcalc.collisions import quantum, recipe
 from pertcalc.collisions.pair import CollisionPair, pair_of
-from pertcalc.collisions.recipe import Key, averaged, family_tables
+from pertcalc.collisions.recipe import Key, ThermalRates, averaged
 from pertcalc.collisions.semiclassical import CrossSections
 from pertcalc.constants import AU_RATE_CM3_S, KELVIN_HARTREE
 from pertcalc.curves import files
 from pertcalc.curves.curveset import CurveSet
 from pertcalc.errors import InputError, OutOfRangeError, UnknownNameError
 from pertcalc.model_error import model_errors
+from pertcalc.names import METHODS
 from pertcalc.results import LEVEL_UNIT, LINE_UNIT, Coefficient, CollisionRates
 from pertcalc.thermal import HIGHEST
 
 Array = NDArray[np.float64]
 Progress = Callable[[int, int], None]
 
-METHODS = ("semiclassical", "closed-form")
 # Below this the classical paths mean nothing: the de Broglie wavelength is as long as the collision [K].
 T_LOWEST, T_HIGHEST = 20.0, 2000.0
+# What makes the tables of a method and what turns them into rates.
+DYNAMICS: dict[str, tuple[Callable[..., dict[str, CrossSections]], ThermalRates]] = {
+    "semiclassical": (recipe.family_tables, recipe.thermal_rates),
+    "quantum": (quantum.level_tables, quantum.thermal_rates),
+}
 RANKS = {"P1/2": (1,), "P3/2": (1, 2, 3)}
 LINES = {"D1": "P1/2", "D2": "P3/2"}
 
@@ -94,7 +100,7 @@ def collision_rates(
     temperature : float or sequence of float
         Gas temperatures [K]; all are answered from one table of cross sections.
     method : str
-        "semiclassical" (default) or "closed-form".
+        "semiclassical" (default), "quantum" or "closed-form".
     curves : CurveSet, path or None
         A curve file or set instead of the default of the pair.
     progress : callable or None
@@ -117,8 +123,9 @@ def collision_rates(
     pair = pair_of(loaded)
     if method == "closed-form":
         return closed_form_result(loaded, pair, T)
-    tables = family_tables(pair, T, progress)
-    return semiclassical_result(loaded, pair, T, tables, model_errors(loaded, T, progress))
+    make, average = DYNAMICS[method]
+    tables = make(pair, T, progress)
+    return assemble(loaded, pair, T, method, average, tables, model_errors(loaded, T, method, progress))
 
 
 def _variants(tables: Mapping[str, CrossSections]) -> list[Mapping[str, CrossSections]]:
@@ -130,16 +137,17 @@ def _variants(tables: Mapping[str, CrossSections]) -> list[Mapping[str, CrossSec
     ]
 
 
-def semiclassical_result(
+def assemble(
     curves: CurveSet,
     pair: CollisionPair,
     temperatures: Array,
+    method: str,
+    average: ThermalRates,
     tables: Mapping[str, CrossSections],
     model: Mapping[Key, Array],
 ) -> CollisionRates:
     """Thermal rates with their numerical errors from tables already computed, and the model errors by rate key."""
-    best = averaged(pair, temperatures, tables)
-    others = [averaged(pair, temperatures, variant) for variant in _variants(tables)]
+    best, *others = (averaged(average, pair, temperatures, variant) for variant in (tables, *_variants(tables)))
 
     def coefficient(key: Key, unit: str) -> Coefficient:
         rate = np.array([a.rate for a in best[key]])
@@ -148,14 +156,11 @@ def semiclassical_result(
         exponent = np.array([a.exponent for a in best[key]])
         return Coefficient(unit, rate * AU_RATE_CM3_S, error, model[key], exponent)
 
-    work = {"paths": 0, "exponentials": 0, "energies": int(tables["lower"].energy.size)}
-    for table in tables.values():
-        for name, count in table.work.items():
-            work[name] += count
+    work = {name: sum(table.work[name] for table in tables.values()) for name in next(iter(tables.values())).work}
     return CollisionRates(
         alkali=curves.alkali,
         noble_gas=curves.noble_gas,
-        method="semiclassical",
+        method=method,
         curves_id=curves.id,
         curves_sha256=curves.sha256,
         temperatures=temperatures,

@@ -69,12 +69,7 @@ BAD_INPUT = [
         2,
         "--field = '5': a unit is missing; write --field as '0.5 G' or '50 uT'.",
     ),
-    (
-        "report Rb --method quantum",
-        2,
-        f"method 'quantum' is not part of version {__version__}; use semiclassical or closed-form.",
-    ),
-    ("rates Rb Ar --method foo", 2, "method 'foo' is not known. Known: semiclassical, closed-form."),
+    ("rates Rb Ar --method foo", 2, "method 'foo' is not known. Known: semiclassical, quantum, closed-form."),
     ("rates Rb Ar --json --csv", 2, "--json and --csv exclude each other; give one of them."),
     ("curves Rb --plot x.png", 2, "--plot draws one pair: give ALKALI and GAS, or --curves FILE."),
     ("curves Rb Ar --plot x.pdf", 2, "figure file = 'x.pdf': must end in .png or .svg; choose one of these"),

@@ -15,6 +15,7 @@ PACKAGE = Path(__file__).parents[1] / "pertcalc"
 # A module or package may import what stands before it, never what stands after it. Add a new one at its place.
 LAYERS = [
     "errors",
+    "names",
     "constants",
     "units",  # words -> numbers
     "angular",

@@ -21,6 +21,7 @@ from pertcalc.thermal import LOG_SPACING, Average, balanced_transfer, effort, en
 Array = NDArray[np.float64]
 Progress = Callable[[int, int], None]
 Key = tuple[str, ...]
+ThermalRates = Callable[[Mapping[str, CrossSections], float, float, float], dict[Key, Average]]
 
 FAMILIES = ("lower", "pi", "upper")
 # Reduced mass [u] from which the standard spacing of energies is dense enough.
@@ -138,7 +139,9 @@ def family_tables(
     return tables
 
 
-def averaged(pair: CollisionPair, temperatures: Array, tables: Mapping[str, CrossSections]) -> dict[Key, list[Average]]:
-    """Every thermal rate [au] at every temperature [K] from the tables of the three families."""
-    rows = [thermal_rates(tables, pair.splitting, float(T), pair.reduced_mass) for T in temperatures]
+def averaged(
+    average: ThermalRates, pair: CollisionPair, temperatures: Array, tables: Mapping[str, CrossSections]
+) -> dict[Key, list[Average]]:
+    """Every thermal rate [au] at every temperature [K] from the tables of a method and its `thermal_rates`."""
+    rows = [average(tables, pair.splitting, float(T), pair.reduced_mass) for T in temperatures]
     return {key: [row[key] for row in rows] for key in rows[0]}

@@ -72,7 +72,7 @@ class CrossSections:
 def reach(pair: CollisionPair, speed: float) -> float:
     """Weisskopf radius of the actual curves: the outermost R at which a straight path turns a phase of one radian.
 
-    For a pure -C6/R^6 difference it is (3 pi C6/8 v)^(1/5); the repulsive B curves of helium reach further than their C6.
+    For a pure -C6/R^6 difference it is (3 pi C6/8 v)^(1/5); the B curves of helium repel further out than that.
 
     Parameters
     ----------

@@ -55,8 +55,7 @@ def _compare(measurement: Measurement, rates: CollisionRates) -> Comparison:
     # as_rate is linear: what turns the published number into a rate also turns our rate into the published unit.
     per_unit = as_rate(measurement, rates.reduced_mass).value / measurement.value
     errors = [
-        None if array is None else float(array[i])
-        for array in (coefficient.numerical_error, coefficient.model_error)
+        None if array is None else float(array[i]) for array in (coefficient.numerical_error, coefficient.model_error)
     ]
     return Comparison(measurement, float(coefficient.values[i]) / per_unit, errors[0], errors[1])
 

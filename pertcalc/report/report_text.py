@@ -152,8 +152,7 @@ def _gas_section(gas: GasReport, report: Report, cite: Citations) -> list[str]:
 
 def _curve_marks(gas: GasReport, cite: Citations) -> str:
     return ", ".join(
-        f"{name} {state.mark} {cite(f'{state.mark}: {state.source.cite}')}"
-        for name, state in gas.curves.states.items()
+        f"{name} {state.mark} {cite(f'{state.mark}: {state.source.cite}')}" for name, state in gas.curves.states.items()
     )
 
 
