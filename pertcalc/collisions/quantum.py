@@ -38,7 +38,7 @@ LIGHT = 10.0
 
 
 def _sections(pair: CollisionPair, level: str, energy: float, points: float, scale: float) -> tuple[Array, int, int]:
-    """Cross sections of one level at one kinetic energy, shape (observables,) [bohr^2], inversions, (Jt, parity) blocks."""
+    """Cross sections of one level at one kinetic energy [bohr^2], 3x3 inversions, blocks of (Jt, parity)."""
     index = LEVELS.index(level)
     above = energy + index * pair.splitting
     speed = float(np.sqrt(2 * energy / pair.reduced_mass))
