@@ -182,9 +182,6 @@ def ground_matrices(
 ) -> tuple[ComplexArray, int]:
     """S_g(N) = exp(2 i delta_N) of the ground curve for N = 0 ... highest, and the inversions done.
 
-    The phases of a difference potential beyond the matching distance are included: seen from the upper level, whose
-    matrices end there, S_g(N) carries exp(+2 i Int (V_0 - V_X) dt) with V_0 = (V_Sigma + 2 V_Pi)/3.
-
     Parameters
     ----------
     pair : CollisionPair
@@ -227,12 +224,29 @@ def ground_matrices(
         y, count = propagate(blocks, potential, pieces, 3 * float(np.sqrt(2 * mass * energy)))
         inversions += count
         S[:, some] = np.einsum("nii->in", _match(y, N[:, some], momentum2, r_match))
-    waves = np.arange(highest + 1, dtype=float)
-    return S.T.ravel()[: highest + 1] * np.exp(2j * _outer_phase(pair, energy, waves, r_match)), inversions
+    return S.T.ravel()[: highest + 1], inversions
 
 
-def _outer_phase(pair: CollisionPair, energy: float, N: Array, r_match: float) -> Array:
-    """Int (V_0 - V_X) dR/v_R from r_match to infinity along free straight paths, shape of N [radian]."""
+def outer_phase(pair: CollisionPair, energy: float, N: Array, r_match: float) -> Array:
+    """What matching at r_match leaves out of a line: Int (V_0 - V_X) dR/v_R beyond it, V_0 = (V_Sigma + 2 V_Pi)/3.
+
+    S S_g* of partial wave N lacks the factor exp(-2 i phase).
+
+    Parameters
+    ----------
+    pair : CollisionPair
+    energy : float
+        Kinetic energy in the level [hartree].
+    N : ndarray, shape (n,)
+        Partial waves.
+    r_match : float
+        [bohr].
+
+    Returns
+    -------
+    phase : ndarray, shape (n,)
+        Along free straight paths [radian].
+    """
     nodes, weights = np.polynomial.legendre.leggauss(20)
     # u = 1/R from the end of the table, where nothing is left, to r_match.
     inner, outer = 1 / r_match, 0.5 / R_END

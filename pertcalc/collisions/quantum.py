@@ -11,7 +11,7 @@ from collections.abc import Callable, Mapping
 import numpy as np
 from numpy.typing import NDArray
 
-from pertcalc.collisions.close_coupling import ground_matrices, scattering_matrices
+from pertcalc.collisions.close_coupling import ground_matrices, outer_phase, scattering_matrices
 from pertcalc.collisions.multipoles import INDEX, OBSERVABLES
 from pertcalc.collisions.pair import CollisionPair
 from pertcalc.collisions.partial_waves import LEVELS, line_cross_section, multipole_cross_sections
@@ -49,7 +49,8 @@ def _sections(pair: CollisionPair, level: str, energy: float, points: float, sca
     matrices = scattering_matrices(pair, above, last, match, points)
     highest = int(matrices.total[-1] + 2)
     ground, count = ground_matrices(pair, energy, highest, match, above, points)
-    line = line_cross_section(matrices, level, ground)
+    beyond = outer_phase(pair, energy, np.arange(ground.size, dtype=float), match)
+    line = line_cross_section(matrices, level, ground * np.exp(2j * beyond))
     values = np.zeros(len(OBSERVABLES))
     values[INDEX[f"{level}.width"]], values[INDEX[f"{level}.shift"]] = line.real, line.imag
     for K in range(2 if level == "P1/2" else 4):
