@@ -24,6 +24,7 @@ PARITIES = ("e", "f")
 # Propagation starts where the largest wave has fallen by exp(-FORBIDDEN) inside its turning point.
 FORBIDDEN = 16.0
 R_SMALLEST = 1.5
+BARRIER = 0.5
 # Blocks that share a start: enough to amortise numpy's calls, few enough not to start all at the smallest R.
 GROUP = 400
 
@@ -83,9 +84,10 @@ def _full(y: Symmetric) -> Array:
 
 
 def _match(y: Symmetric, N: Array, momentum2: Array, R: float) -> ComplexArray:
-    """S from the log-derivative at R; closed channels (momentum2 < 0) fall off by their local decay and drop out."""
-    is_open = momentum2 > 0
-    k = np.sqrt(np.where(is_open, momentum2, -momentum2 + N * (N + 1) / R**2))
+    """S from the log-derivative at R; closed channels fall off by their local decay and drop out (S = 0 there)."""
+    # A slow channel whose centrifugal barrier still stands at twice its energy there is not reached either.
+    is_open = momentum2 > np.maximum(BARRIER * N * (N + 1) / R**2, 0)
+    k = np.sqrt(np.where(is_open, momentum2, np.abs(N * (N + 1) / R**2 - momentum2)))
     regular, other = np.ones_like(k), np.ones_like(k)
     slope, other_slope = k.copy(), -k
     for values, found in zip((regular, other, slope, other_slope), _free(N[is_open], k[is_open], R), strict=True):
