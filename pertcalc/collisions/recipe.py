@@ -1,9 +1,13 @@
 """Which family of paths answers for which rate of the semiclassical method: the empirical rule in one place.
 
-P1/2: the lower adiabatic curve. P3/2 starts on two curves: V_Pi for width, shift and rank 1; 2/3 V_Pi + 1/3 upper
-curve for rank 2; equal weights for rank 3 (weights on results, not on curves). Transfer and outflow: the lower curve
-at the mean energy of the two levels, both directions from one integral (detailed balance is exact). The outflow inside
-a multipole loss is replaced by that transfer. Reasons and numbers: notes/semiclassical.md.
+One classical path must serve states that move on different curves. With xi = splitting R/vbar, R = 10 bohr (the phase
+the splitting turns during a collision), the two ends are clear: xi >> 1, the levels stay on their adiabatic curves
+(P1/2 on the lower Omega = 1/2, P3/2 on V_Pi and the upper one); xi << 1, the spin is a spectator and both levels are
+the same mixture of V_Pi and V_Sigma. Rates are weighted means of results (not of curves) on V_Pi, upper and lower
+curve, with weights that pass from one end to the other; fitted to quantum close coupling of the 25 default pairs at
+300, 400 and 500 K, notes/method-comparison.md. Transfer and outflow: the lower curve at the mean energy of the two
+levels, both directions from one integral (detailed balance is exact); the outflow inside a multipole loss is replaced
+by that transfer.
 """
 
 from __future__ import annotations
@@ -16,7 +20,7 @@ from numpy.typing import NDArray
 from pertcalc.collisions.pair import CollisionPair
 from pertcalc.collisions.semiclassical import CrossSections, cross_sections
 from pertcalc.constants import AMU_AU, KELVIN_HARTREE
-from pertcalc.thermal import LOG_SPACING, Average, balanced_transfer, effort, energy_grid, maxwell
+from pertcalc.thermal import LOG_SPACING, Average, balanced_transfer, effort, energy_grid, maxwell, mean_speed
 
 Array = NDArray[np.float64]
 Progress = Callable[[int, int], None]
@@ -28,8 +32,28 @@ FAMILIES = ("lower", "pi", "upper")
 HEAVY = 10.0
 # Share of the standard steps: only the transfer, taken from the lower curve, needs every one of them.
 STEP_SHARE = {"lower": 1.0, "pi": 0.6, "upper": 0.6}
-# Weights of (pi, upper) for rank K of P3/2.
-P32_WEIGHTS = {1: (1.0, 0.0), 2: (2 / 3, 1 / 3), 3: (0.5, 0.5)}
+R_COLLISION = 10.0
+# Weight of V_Pi (the rest is the upper curve) in the loss of rank K of P3/2, for xi << and >> XI_P32.
+P32_SUDDEN = {1: 0.87, 2: 0.90, 3: 0.72}
+P32_ADIABATIC = {1: 0.80, 2: 0.50, 3: 0.42}
+XI_P32 = 3.0
+# P1/2: the lower curve for xi >> XI_P12; for xi << XI_P12 V_Pi for the line, and this weight of V_Pi for rank 1.
+P12_SUDDEN = 0.70
+XI_P12 = 0.15
+
+
+def p32_weights(K: int, xi: float) -> tuple[float, float]:
+    """Weights of V_Pi and of the upper curve in the loss of rank K of P3/2 at Massey parameter xi [1]."""
+    sudden = XI_P32 / (xi + XI_P32)
+    on_pi = P32_ADIABATIC[K] + sudden * (P32_SUDDEN[K] - P32_ADIABATIC[K])
+    return on_pi, 1 - on_pi
+
+
+def p12_weights(xi: float, line: bool) -> tuple[float, float, float]:
+    """Weights of the lower curve, V_Pi and the upper curve for P1/2 at Massey parameter xi [1]: its line or rank 1."""
+    sudden = XI_P12 / (xi + XI_P12)
+    on_pi = 1.0 if line else P12_SUDDEN
+    return 1 - sudden, sudden * on_pi, sudden * (1 - on_pi)
 
 
 def _sum(parts: list[tuple[float, Average]]) -> Average:
@@ -75,21 +99,25 @@ def thermal_rates(
         ("gain", "P1/2", "1"): gain.up,
         ("gain", "P3/2", "1"): gain.down,
     }
-    for line, level, table in (("D1", "P1/2", lower), ("D2", "P3/2", pi)):
-        # The cross section belongs to the half width, an angular frequency.
-        rates["fwhm", line] = _sum([(2.0, mean(table, f"{level}.width"))])
-        rates["shift", line] = mean(table, f"{level}.shift")
+    xi = splitting * R_COLLISION / float(mean_speed(temperature, reduced_mass))
+
+    def weighted(name: str, parts: Iterable[tuple[float, CrossSections]]) -> list[tuple[float, Average]]:
+        return [(weight, mean(table, name)) for weight, table in parts if weight]
 
     def elastic(level: str, K: int, parts: list[tuple[float, CrossSections]], inflow: Average) -> Average:
-        terms = [(1.0, inflow)]
-        for weight, table in parts:
-            terms += [(weight, mean(table, f"{level}.loss{K}")), (-weight, mean(table, f"{level}.outflow"))]
-        return _sum(terms)
+        leaving = [(-weight, table) for weight, table in parts]
+        return _sum([(1.0, inflow), *weighted(f"{level}.loss{K}", parts), *weighted(f"{level}.outflow", leaving)])
 
-    rates["loss", "P1/2", "1"] = elastic("P1/2", 1, [(1.0, lower)], plain.up)
-    for K, (on_pi, on_upper) in P32_WEIGHTS.items():
-        parts = [(w, t) for w, t in ((on_pi, pi), (on_upper, upper)) if w]
-        rates["loss", "P3/2", str(K)] = elastic("P3/2", K, parts, plain.down)
+    low = list(zip(p12_weights(xi, line=True), (lower, pi, upper), strict=True))
+    for line, level, parts in (("D1", "P1/2", low), ("D2", "P3/2", [(1.0, pi)])):
+        # The cross section belongs to the half width, an angular frequency.
+        rates["fwhm", line] = _sum([(2 * weight, part) for weight, part in weighted(f"{level}.width", parts)])
+        rates["shift", line] = _sum(weighted(f"{level}.shift", parts))
+    low = list(zip(p12_weights(xi, line=False), (lower, pi, upper), strict=True))
+    rates["loss", "P1/2", "1"] = elastic("P1/2", 1, low, plain.up)
+    for K in (1, 2, 3):
+        high = list(zip(p32_weights(K, xi), (pi, upper), strict=True))
+        rates["loss", "P3/2", str(K)] = elastic("P3/2", K, high, plain.down)
     return rates
 
 
