@@ -2,8 +2,8 @@
 
 Curve part: every stated relative error (De, Re, C6 of X, A, B) is applied in turn, the rates are computed again on
 coarse grids, and the changes are added in quadrature. For the default sets that was done once, at three temperatures,
-by notes/scripts/make_model_errors.py; for a user's curves it is done on the spot. Method part: the largest deviation
-from quantum close coupling on the same curves, K-Ar. See notes/model-error.md.
+by notes/scripts/make_model_errors.py; for a user's curves it is done on the spot. Method part: the deviation of the
+semiclassical from the quantum method on the same curves, by notes/scripts/compare_methods.py. notes/model-error.md.
 """
 
 from __future__ import annotations
@@ -26,23 +26,40 @@ from pertcalc.curves.deform import PARAMETERS, Deformed
 Array = NDArray[np.float64]
 Progress = Callable[[int, int], None]
 
-# Relative; tests/published/test_cross_check_k_ar.py holds the method to these.
-METHOD_ERRORS: dict[tuple[str, ...], float] = {
-    ("fwhm",): 0.03,
-    ("shift",): 0.04,
-    ("loss", "P1/2"): 0.04,
-    ("loss", "P3/2", "1"): 0.06,
-    ("loss", "P3/2", "2"): 0.06,
-    ("loss", "P3/2", "3"): 0.08,
-    ("transfer",): 0.15,
-    ("gain",): 0.2,
-}
-_DATA = "model_errors.json"
+_CURVES = "model_errors.json"
+_METHODS = "method_differences.json"
+# A pair that was compared may agree by chance at one temperature: never better than this quantile of its rate.
+CHANCE = 0.5
+# A pair that was not compared may be one of the worse ones.
+UNKNOWN = 0.9
 
 
-def method_error(key: Key) -> float:
-    """Relative error of the semiclassical method for one rate key [1], shape ()."""
-    return next(error for start, error in METHOD_ERRORS.items() if key[: len(start)] == start)
+def method_errors(curves: CurveSet, temperatures: Array) -> dict[Key, Array]:
+    """Relative error of the semiclassical method for every rate [1], shape (n,), from the comparison with quantum.
+
+    Parameters
+    ----------
+    curves : CurveSet
+        A default set was compared itself (and counts at least with the median of all pairs); any other gets the 90 %
+        quantile of all pairs.
+    temperatures : ndarray, shape (n,)
+        [K]; interpolated, constant outside 300 ... 500 K.
+
+    Returns
+    -------
+    dict
+    """
+    compared = _shipped(_METHODS)
+    own = compared.get(curves.sha256)
+    found = {}
+    for name in next(iter(compared.values()))["relative"]:
+        all_pairs = np.concatenate([entry["relative"][name] for entry in compared.values()])
+        typical = float(np.quantile(all_pairs, UNKNOWN if own is None else CHANCE))
+        error = np.full(temperatures.shape, typical)
+        if own is not None:
+            error = np.maximum(error, np.interp(temperatures, own["temperatures_K"], own["relative"][name]))
+        found[tuple(name.split(" "))] = error
+    return found
 
 
 def deformed_pair(curves: CurveSet, state: str, parameter: str, change: float) -> CollisionPair:
@@ -119,14 +136,13 @@ def _rates(pair: CollisionPair, temperatures: Array, tables: Mapping) -> dict[Ke
 
 
 @cache
-def _shipped() -> dict:
-    text = (resources.files("pertcalc") / "data" / _DATA).read_text(encoding="utf-8")
-    return json.loads(text)
+def _shipped(name: str) -> dict:
+    return json.loads((resources.files("pertcalc") / "data" / name).read_text(encoding="utf-8"))
 
 
 def shipped_errors(curves: CurveSet, temperatures: Array) -> dict[Key, Array] | None:
     """Curve errors of a default set, interpolated in temperature [K], or None if this file was not tabulated."""
-    entry = _shipped().get(curves.sha256)
+    entry = _shipped(_CURVES).get(curves.sha256)
     if entry is None:
         return None
     return {
@@ -158,5 +174,7 @@ def model_errors(
     found = shipped_errors(curves, temperatures)
     if found is None:
         found = curve_errors(curves, temperatures, progress)
-    own = method_error if method == "semiclassical" else (lambda key: 0.0)
-    return {key: np.hypot(error, own(key)) for key, error in found.items()}
+    if method != "semiclassical":
+        return found
+    own = method_errors(curves, temperatures)
+    return {key: np.hypot(error, own[key]) for key, error in found.items()}

@@ -29,6 +29,8 @@ Progress = Callable[[int, int], None]
 
 # Below this the classical paths mean nothing: the de Broglie wavelength is as long as the collision [K].
 T_LOWEST, T_HIGHEST = 20.0, 2000.0
+# Differences of grids can vanish by chance; no rate is called better than this.
+NUMERICAL_FLOOR = 0.002
 # What makes the tables of a method and what turns them into rates.
 DYNAMICS: dict[str, tuple[Callable[..., dict[str, CrossSections]], ThermalRates]] = {
     "semiclassical": (recipe.family_tables, recipe.thermal_rates),
@@ -46,9 +48,13 @@ def temperatures_of(temperature: float | Iterable[float]) -> Array:
     InputError, OutOfRangeError
         Not a number, not positive, or outside what classical paths and the curves' walls support.
     """
-    values = np.atleast_1d(np.asarray(temperature, dtype=float))
+    rule = f"temperature = {temperature!r:.60} must be a number or a list of numbers [K], such as 333.15"
+    try:
+        values = np.atleast_1d(np.asarray(temperature, dtype=float))
+    except (TypeError, ValueError) as error:
+        raise InputError(rule) from error
     if values.ndim != 1 or values.size == 0:
-        raise InputError("temperature must be a number or a list of numbers [K], such as 333.15")
+        raise InputError(rule)
     for T in values:
         if not np.isfinite(T) or T <= 0:
             raise InputError(f"temperature = {T:g} K must be a positive number; give kelvin, such as 333.15")
@@ -129,12 +135,24 @@ def collision_rates(
 
 
 def _variants(tables: Mapping[str, CrossSections]) -> list[Mapping[str, CrossSections]]:
-    """The same tables with every second impact parameter, every second energy, and the step error added."""
+    """The same tables with every second impact parameter, the step error added, and every second energy (both ways)."""
     return [
         {name: replace(t, sigma=t.half_grid) for name, t in tables.items()},
-        {name: t.thinned() for name, t in tables.items()},
         {name: replace(t, sigma=t.sigma + t.step_change) for name, t in tables.items()},
+        {name: t.thinned(0) for name, t in tables.items()},
+        {name: t.thinned(1) for name, t in tables.items()},
     ]
+
+
+def numerical_error(rate: Array, variants: list[Array]) -> Array:
+    """Relative numerical error [1] of rates from the same rates on the tables of `_variants`, shape of rate.
+
+    The change with every second impact parameter, the step error, and the larger of the changes with the even and with
+    the odd energies (an undulation of sigma(E) may hide from one of them), added; never below NUMERICAL_FLOOR.
+    """
+    half, step, even, odd = (np.abs(variant - rate) for variant in variants)
+    total = half + step + np.maximum(even, odd)
+    return np.maximum(total / np.maximum(np.abs(rate), 1e-300), NUMERICAL_FLOOR)
 
 
 def assemble(
@@ -151,8 +169,7 @@ def assemble(
 
     def coefficient(key: Key, unit: str) -> Coefficient:
         rate = np.array([a.rate for a in best[key]])
-        changes = [np.abs(np.array([a.rate for a in other[key]]) - rate) for other in others]
-        error = np.sum(changes, axis=0) / np.maximum(np.abs(rate), 1e-300)
+        error = numerical_error(rate, [np.array([a.rate for a in other[key]]) for other in others])
         exponent = np.array([a.exponent for a in best[key]])
         return Coefficient(unit, rate * AU_RATE_CM3_S, error, model[key], exponent)
 

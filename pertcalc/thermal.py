@@ -88,7 +88,10 @@ def maxwell(energy: Array, sigma: Array, temperature: float, reduced_mass: float
         Rate [bohr^3 per atomic unit of time]; the exponent is 1/2 - 2 + <x> over the integrand.
     """
     x = energy / (KELVIN_HARTREE * temperature)
-    weight = x**2 * np.exp(-x) * np.log(energy[1] / energy[0])
+    step = np.log(energy[1] / energy[0])
+    weight = x**2 * np.exp(-x) * step
+    # Below the grid sigma counts as constant: the terms left out are a geometric series.
+    weight[0] /= 1 - np.exp(-2 * step)
     terms = weight * sigma
     total = terms.sum()
     exponent = float(terms @ x / total - 1.5) if total != 0 else 0.0

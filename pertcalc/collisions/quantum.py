@@ -116,7 +116,7 @@ def level_tables(
 
         def report(done: int, total: int, i: int = i) -> None:
             if progress is not None:
-                progress(i * total + done, len(LEVELS) * total)
+                progress(100 * i + 100 * done // total, 100 * len(LEVELS))
 
         tables[level] = level_cross_sections(pair, level, energy, points, report)
     return tables

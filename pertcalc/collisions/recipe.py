@@ -161,7 +161,7 @@ def family_tables(
 
         def report(done: int, total: int, i: int = i) -> None:
             if progress is not None:
-                progress(i * total + done, len(names) * total)
+                progress(100 * i + 100 * done // total, 100 * len(names))
 
         tables[family] = cross_sections(pair, family, energy, density, steps * STEP_SHARE[family], not quick, report)
     return tables

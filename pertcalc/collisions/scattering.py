@@ -146,7 +146,8 @@ def scatter(
     Returns
     -------
     Scattering
-        Unitary to rounding; the error per element is about 1e-3 at the default steps, fourth order in them.
+        Unitary to rounding. The error per element is about 1e-3 at the default steps, 1e-2 at worst, and falls
+        abruptly to 1e-6 by three times as many: along a path the errors of the steps beat against each other.
     """
     block_a = np.empty((b.size, 3, 3), dtype=complex)
     block_b = np.empty_like(block_a)

@@ -58,14 +58,14 @@ class CrossSections:
         """Cross section of one observable, shape (n,) [bohr^2]."""
         return self.sigma[:, INDEX[name]]
 
-    def thinned(self) -> CrossSections:
-        """The table at every second energy."""
+    def thinned(self, first: int) -> CrossSections:
+        """The table at every second energy, from number `first` (0 or 1) on."""
         return replace(
             self,
-            energy=self.energy[::2],
-            sigma=self.sigma[::2],
-            half_grid=self.half_grid[::2],
-            step_change=self.step_change[::2],
+            energy=self.energy[first::2],
+            sigma=self.sigma[first::2],
+            half_grid=self.half_grid[first::2],
+            step_change=self.step_change[first::2],
         )
 
 

@@ -3,7 +3,7 @@
 Source: data/cross_check_K-Ar.json, COMPUTED by another program (partial waves to 45 k + 15, R to 60 bohr, Born tail in
 the shift; a second code reproduces all but the shift to 0.04 % at E = kT). Not published data, and not our program.
 The rank-1 gains at E = kT are from a third program of that comparison (COMPUTED). Tolerances: what the method is
-expected to hold; pertcalc.model_error quotes them as its error.
+expected to hold.
 """
 
 from __future__ import annotations
@@ -13,9 +13,9 @@ from functools import cache
 import numpy as np
 import pytest
 
-from pertcalc.collisions.recipe import P32_WEIGHTS
+from pertcalc.collisions.recipe import R_COLLISION, p32_weights
 from pertcalc.collisions.semiclassical import cross_sections
-from pertcalc.model_error import METHOD_ERRORS
+from pertcalc.thermal import mean_speed
 from tests.collision_cases import cross_check, model_k_ar, thermal
 
 POINTS = range(4)
@@ -39,6 +39,12 @@ def carried(level: str, name: str) -> np.ndarray:
     offset = 0.5 * model_k_ar().splitting * (-1 if level == "P1/2" else 1)
     mean = energies() + offset
     return cross_sections(model_k_ar(), "lower", mean, 1.5, 1.5, False).column(name) * mean / energies()
+
+
+def massey() -> float:
+    """Splitting times the time to cross the collision at the mean thermal speed."""
+    pair = model_k_ar()
+    return pair.splitting * R_COLLISION / float(mean_speed(cross_check()["T_K"], pair.reduced_mass))
 
 
 def quantum(level: str, column: str) -> np.ndarray:
@@ -78,7 +84,7 @@ def test_orientation_of_p12(i):
 @pytest.mark.parametrize("i", POINTS)
 @pytest.mark.parametrize("K", [1, 2, 3])
 def test_multipoles_of_p32(K, i):
-    on_pi, on_upper = P32_WEIGHTS[K]
+    on_pi, on_upper = p32_weights(K, massey())
     ours = on_pi * elastic("pi", "P3/2", K) + on_upper * elastic("upper", "P3/2", K)
     ours += carried("P3/2", "P3/2.outflow")
     assert ours[i] == pytest.approx(quantum("P3/2", f"multipole_loss_{K}")[i], rel=MULTIPOLES[K])
@@ -102,16 +108,3 @@ def test_the_path_of_entrance_is_the_better_one():
     transfer = carried("P1/2", "P1/2.outflow")
     worst = {path: np.abs((elastic(path, "P1/2", 1) + transfer) / exact - 1).max() for path in ("lower", "pi")}
     assert worst["pi"] > 3 * worst["lower"]
-
-
-def test_quoted_method_errors_are_not_smaller_than_what_is_tested():
-    held = {
-        ("fwhm",): WIDTH,
-        ("shift",): SHIFT,
-        ("loss", "P1/2"): ORIENTATION,
-        ("transfer",): TRANSFER,
-        ("gain",): GAIN,
-        **{("loss", "P3/2", str(K)): error for K, error in MULTIPOLES.items()},
-    }
-    for key, error in held.items():
-        assert METHOD_ERRORS[key] >= error
