@@ -118,10 +118,11 @@ def curve_errors(curves: CurveSet, temperatures: Array, progress: Progress | Non
     squares = {key: np.zeros(temperatures.shape) for key in base}
     for i, (state, parameter, change) in enumerate(moves):
         moved = deformed_pair(curves, state, parameter, change)
-        # The ground curve drives no path: the rates of the upper family stay as they are.
+        # The ground curve drives no path and enters the lines alone; what else changes is noise of the grids.
         families = ("lower", "pi") if state == "X" else FAMILIES
         found = _rates(moved, temperatures, {**tables, **family_tables(moved, temperatures, None, families, True)})
-        for key, rate in found.items():
+        for key in found if state != "X" else [key for key in found if key[0] in ("fwhm", "shift")]:
+            rate = found[key]
             squares[key] += ((rate - base[key]) / np.where(base[key] == 0, np.inf, base[key])) ** 2
         if progress is not None:
             progress(i + 1, len(moves))

@@ -240,7 +240,7 @@ def outer_phase(pair: CollisionPair, energy: float, N: Array, r_match: float) ->
     energy : float
         Kinetic energy in the level [hartree].
     N : ndarray, shape (n,)
-        Partial waves.
+        Partial waves [1].
     r_match : float
         [bohr].
 
