@@ -11,11 +11,14 @@ import click
 
 from pertcalc import __version__
 from pertcalc.cli_options import (
+    QUANTITIES,
     AnyGas,
+    Quantity,
     Species,
     Words,
     checked_gas,
     deliver,
+    method_option,
     one_format,
     progress_bar,
     rate_options,
@@ -262,3 +265,65 @@ def curves(
         click.echo(f"wrote {place}", err=True)
         return
     deliver(curves_text.shown(chosen, as_json, as_csv), output, force)
+
+
+@cli.command(short_help="Published checks, exact laws, and every measured value beside ours.")
+@click.option("--all", "everything", is_flag=True, help="Every measured pair, not only those with a READ value.")
+@click.option(
+    "--quantity", "quantities", type=Quantity(), multiple=True,
+    help=f"Only these measured values: {', '.join(QUANTITIES)}; may be repeated. [default: all]",
+)  # fmt: skip
+@method_option
+@click.option("--jobs", type=click.IntRange(min=1), help="Processes that share the pairs. [default: all processors]")
+@result_options
+def validate(
+    everything: bool,
+    quantities: tuple[str, ...],
+    method: str,
+    jobs: int | None,
+    as_json: bool,
+    as_csv: bool,
+    output: str | None,
+    force: bool,
+) -> None:
+    """How far to trust it: published checks, exact laws, and every measured value beside ours.
+
+    Wells and rates that were READ and exact laws are checked against tolerances stated beforehand; if one fails,
+    everything is printed and the exit code is 4. Values FROM MEMORY are compared and never fail. Every measured row
+    stands beside ours with errors, ratio and deviation in units of the combined error; medians per quantity and gas.
+
+    \b
+    Example:
+        pertcalc validate --all --quantity fwhm --quantity shift -o widths.txt
+    """
+    one_format(as_json, as_csv)
+    if output is not None:
+        _check_output(output, force)
+    from pertcalc.report.compute import default_jobs
+    from pertcalc.report.validation_run import validate as run
+
+    with progress_bar("measured pairs") as progress:
+        found = run(everything, quantities, method, jobs or default_jobs(), progress)
+    deliver(_validation(found, as_json, as_csv), output, force)
+    if found.interrupted:
+        raise Shown(f"stopped by the user; not finished: {', '.join(found.missing)}.", INTERRUPTED)
+    if (failed := found.failure()) is not None:
+        raise failed
+    if found.error is not None:
+        raise found.error
+
+
+def _validation(found: Any, as_json: bool, as_csv: bool) -> str:
+    """A validation in the format asked for."""
+    if as_json:
+        from pertcalc.report.as_json import dump
+        from pertcalc.report.validation_data import validation_json
+
+        return dump(validation_json(found))
+    if as_csv:
+        from pertcalc.report.validation_data import validation_csv
+
+        return validation_csv(found)
+    from pertcalc.report.validation_text import validation_text
+
+    return validation_text(found)

@@ -14,6 +14,8 @@ from pertcalc.errors import InputError, UnknownNameError
 from pertcalc.names import METHODS
 
 Command = TypeVar("Command", bound=Callable[..., Any])
+# Those of pertcalc.measured, which is too heavy for the way to --help (a test compares them).
+QUANTITIES = ("fwhm", "shift", "transfer", "multipole_loss")
 
 
 class Species(click.ParamType):
@@ -78,6 +80,22 @@ class Method(click.ParamType):
         return [CompletionItem(name) for name in METHODS if name.startswith(incomplete)]
 
 
+class Quantity(click.ParamType):
+    """A measured quantity; completes on the command line."""
+
+    name = "quantity"
+
+    def convert(self, value: Any, param: click.Parameter | None, ctx: click.Context | None) -> str:
+        """Return the name; UnknownNameError for no quantity of ours."""
+        if value not in QUANTITIES:
+            raise UnknownNameError("quantity", str(value), QUANTITIES)
+        return str(value)
+
+    def shell_complete(self, ctx: click.Context, param: click.Parameter, incomplete: str) -> list[CompletionItem]:
+        """Names that begin with what is typed."""
+        return [CompletionItem(name) for name in QUANTITIES if name.startswith(incomplete)]
+
+
 def result_options(command: Command) -> Command:
     """Add --json, --csv, -o and --force to a command."""
     options = (
@@ -96,6 +114,11 @@ def rate_options(command: Command) -> Command:
     command = click.option(
         "--curves", "curve_file", metavar="FILE", help="A curve file (TOML) in place of the default curves."
     )(command)
+    return method_option(command)
+
+
+def method_option(command: Command) -> Command:
+    """Add --method to a command."""
     return click.option(
         "--method", type=Method(), default=METHODS[0], show_default=True, help=f"One of {', '.join(METHODS)}."
     )(command)

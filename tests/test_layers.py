@@ -30,6 +30,7 @@ LAYERS = [
     "model_error",
     "rates",
     "vapour",
+    "validation",
     "report",
     "cli_options",  # words only
     "cli",
