@@ -20,6 +20,9 @@ Array = NDArray[np.float64]
 # Points per 2 pi of phase, and per e-fold of b where nothing turns.
 POINTS_PER_TURN = 3.0
 POINTS_PER_FOLD = 12.0
+# A phase that turns faster than this per partial wave (curves without a wall, orbiting) is random: more points would
+# only average it better.
+MOST_PER_WAVE = 40.0
 # The scan and the grid reach this many Weisskopf radii; Born tails follow.
 REACH = 3.0
 _SCAN_POINTS = 420
@@ -107,6 +110,8 @@ def impact_grid(family: PathFamily, energy: float, radius: float, density: float
     turns = 2 * np.abs(np.diff(phases, axis=1)).max(axis=0) / (2 * np.pi)
     middle = 0.5 * (scan[1:] + scan[:-1])
     per_bohr = POINTS_PER_TURN * turns / width + POINTS_PER_FOLD / (middle + 0.3 * radius)
+    momentum = float(family.pair.reduced_mass * family.speed(np.array(energy)))
+    per_bohr = np.minimum(per_bohr, MOST_PER_WAVE * momentum + POINTS_PER_FOLD)
     for _ in range(3):
         per_bohr[1:-1] = 0.25 * per_bohr[:-2] + 0.5 * per_bohr[1:-1] + 0.25 * per_bohr[2:]
     cumulated = np.concatenate(([0.0], np.cumsum(density * per_bohr * width)))

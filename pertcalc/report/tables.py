@@ -72,4 +72,6 @@ def table(headers: Sequence[str], rows: Sequence[Sequence[str]], left: int = 1, 
 
 def wrapped(text: str, indent: str = "  ", first: str | None = None) -> list[str]:
     """A paragraph within WIDTH columns; ``first`` begins its first line in place of ``indent``."""
-    return textwrap.wrap(text, WIDTH, initial_indent=indent if first is None else first, subsequent_indent=indent)
+    lead = indent if first is None else first
+    # An address broken at a hyphen cannot be followed.
+    return textwrap.wrap(text, WIDTH, initial_indent=lead, subsequent_indent=indent, break_on_hyphens=False)
