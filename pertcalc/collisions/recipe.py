@@ -30,6 +30,9 @@ ThermalRates = Callable[[Mapping[str, CrossSections], float, float, float], dict
 FAMILIES = ("lower", "pi", "upper")
 # Reduced mass [u] from which the standard spacing of energies is dense enough.
 HEAVY = 10.0
+# Below this Massey parameter (Li, Na, K) energies lie closer by MIXED_SPACING.
+XI_MIXED = 15.0
+MIXED_SPACING = 0.6
 # Share of the standard steps: only the transfer, taken from the lower curve, needs every one of them.
 STEP_SHARE = {"lower": 1.0, "pi": 0.6, "upper": 0.6}
 R_COLLISION = 10.0
@@ -150,6 +153,10 @@ def family_tables(
     """
     # In light pairs few partial waves take part and sigma(E) undulates: they are cheap and get more energies.
     spacing = LOG_SPACING * min(1.0, float(np.sqrt(pair.reduced_mass / (HEAVY * AMU_AU))))
+    # Where the levels mix strongly, transfer undulates with E (two passages of the coupling interfere).
+    slowest = float(mean_speed(temperatures.min(), pair.reduced_mass))
+    if pair.splitting * R_COLLISION / slowest < XI_MIXED:
+        spacing *= MIXED_SPACING
     energy = energy_grid(temperatures, 2 * spacing if quick else spacing)
     density = effort(energy, temperatures, 0.35, 0.3) * (0.6 if quick else 1.0)
     # Fast collisions carry the transfer of widely split levels: they keep every step.
