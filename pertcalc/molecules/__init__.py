@@ -1,0 +1,1 @@
+"""Bound and quasi-bound alkali-gas pairs: levels, counts, equilibrium. One electronic state is one radial problem."""

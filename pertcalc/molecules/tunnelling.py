@@ -1,0 +1,161 @@
+"""Semiclassical side of quasi-bound levels: barriers, energies to start from, WKB widths.
+
+With the Langer term (N + 1/2)^2: Phi(E) = Int sqrt(2 mu (E - V_eff)) dR between the inner turning points is
+(v + 1/2) pi at a level; Gamma = hbar/T ln(1 + e^{-2 theta}), T = 2 hbar dPhi/dE the round trip and theta the barrier
+integral. Source: any text on semiclassical tunnelling (M. S. Child, Semiclassical Mechanics, FROM MEMORY).
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from pertcalc.molecules.grid import mapped_grid
+from pertcalc.molecules.levels import Ints, Levels, well_and_barrier
+from pertcalc.molecules.radial import R_FAR, Array, RadialProblem
+
+_ACTION_ENERGIES = 41
+_ACTION_POINTS = 4000
+_QUADRATURE = 60
+# Candidates are sought to this much above the step of the quantum number at the barrier's top [levels].
+_ABOVE = 0.5
+# They start this part of the barrier's height below its top.
+_BELOW_TOP = 0.02
+
+
+@dataclass(frozen=True, slots=True)
+class Barriers:
+    """Centrifugal barriers that stand before a well, rising N; arrays of shape (n,).
+
+    ``N``; ``height`` [hartree, > 0] and ``r_top`` [bohr] of the barrier; ``depth`` V_eff at the bottom of the well
+    [hartree] and ``r_well`` [bohr].
+    """
+
+    N: Ints
+    height: Array
+    r_top: Array
+    depth: Array
+    r_well: Array
+
+
+def barriers(problem: RadialProblem) -> Barriers:
+    """Every N whose effective potential has a well behind a barrier, with the barrier's top.
+
+    Parameters
+    ----------
+    problem : RadialProblem
+
+    Returns
+    -------
+    Barriers
+        Empty for a curve without well.
+    """
+    rows = []
+    if problem.has_well:
+        N = 1
+        while True:
+            R = np.geomspace(problem.r_in, R_FAR * max(1.0, 20.0 / N), _ACTION_POINTS)
+            V = problem.effective(R, float(N))
+            bottom, top = well_and_barrier(R, V)
+            if not bottom < top < len(R) - 1:
+                break
+            rows.append((N, V[top], R[top], V[bottom], R[bottom]))
+            N += 1
+    columns = np.array(rows).T if rows else np.zeros((5, 0))
+    return Barriers(columns[0].astype(np.int64), columns[1], columns[2], columns[3], columns[4])
+
+
+def candidates(problem: RadialProblem, found: Barriers, levels: Levels) -> tuple[Ints, Ints, Array, NDArray[np.bool_]]:
+    """Energies between limit and barrier from which to seek the levels.
+
+    Parameters
+    ----------
+    problem : RadialProblem
+    found : Barriers
+    levels : Levels
+        Bound levels of all N.
+
+    Returns
+    -------
+    N, v : ndarray of int, shape (n,)
+    energy : ndarray, shape (n,)
+        [hartree]: of the spectrum with a hard wall at the barrier's top, exact for narrow levels; above its last level
+        those that fit the WKB phase, or a point just below the top where WKB puts them slightly above it.
+    walled : ndarray of bool, shape (n,)
+        True where the spectrum with the wall has the level: it exists.
+    """
+    grid = mapped_grid(problem, max(levels.points, 1))
+    bound = np.bincount(levels.N, minlength=int(found.N.max(initial=0)) + 1)
+    rows = []
+    for N, height, r_top, depth in zip(found.N, found.height, found.r_top, found.depth, strict=True):
+        inside = int(np.searchsorted(grid.R, r_top))
+        H = grid.kinetic[:inside, :inside] + np.diag(problem.effective(grid.R[:inside], float(N)))
+        walled = np.linalg.eigvalsh(H)
+        walled = walled[walled < height]
+        rows += [(N, v, E, True) for v, E in enumerate(walled) if v >= bound[N]]
+        low = max(depth, 0.0)
+        E = low + (height - low) * np.linspace(0, 1, _ACTION_ENERGIES)
+        number = _wkb_number(problem, N, E, r_top)
+        edge = _BELOW_TOP * (height - low)
+        more = range(max(len(walled), bound[N]), int(np.floor(number[-1] + _ABOVE)) + 1)
+        rows += [(N, v, np.clip(np.interp(v, number, E), low + edge, height - edge), False) for v in more]
+    if not rows:
+        none = np.zeros(0, dtype=np.int64)
+        return none, none, np.zeros(0), np.zeros(0, dtype=bool)
+    columns = [np.array(column) for column in zip(*rows, strict=True)]
+    return columns[0].astype(np.int64), columns[1].astype(np.int64), columns[2], columns[3]
+
+
+def _wkb_number(problem: RadialProblem, N: int, E: Array, r_top: float) -> Array:
+    """Phi(E)/pi - 1/2 [1] of the region inside the barrier's top: v where it is a whole number."""
+    R = np.linspace(problem.r_in, r_top, _ACTION_POINTS)
+    V = problem.potential(R) + (N + 0.5) ** 2 / (2 * problem.reduced_mass * R * R)
+    kinetic = np.clip(2 * problem.reduced_mass * (E[:, None] - V), 0, None)
+    return np.sqrt(kinetic).sum(axis=1) * (R[1] - R[0]) / np.pi - 0.5
+
+
+def wkb_widths(problem: RadialProblem, N: Ints, energy: Array, inner: Array, outer: Array, r_top: Array) -> Array:
+    """Tunnelling widths ``hbar/T ln(1 + exp(-2 theta))`` of levels below their barriers.
+
+    Parameters
+    ----------
+    problem : RadialProblem
+    N, energy : ndarray, shape (n,)
+        Rotation [1], energy [hartree].
+    inner, outer, r_top : ndarray, shape (n,)
+        Turning points of the well and barrier top [bohr].
+
+    Returns
+    -------
+    ndarray, shape (n,)
+        [hartree]; the well's turning points are those without the Langer term, which costs less than WKB itself.
+    """
+    mu = problem.reduced_mass
+    outside = _outside(problem, N, energy, r_top)
+    # R = middle - half cos t turns the square roots at both ends into smooth functions of t.
+    t = np.pi * (np.arange(_QUADRATURE) + 0.5) / _QUADRATURE
+
+    def squared(low: Array, high: Array) -> tuple[Array, Array]:
+        half = 0.5 * (high - low)[:, None]
+        R = 0.5 * (high + low)[:, None] - half * np.cos(t)
+        return 2 * mu * (energy[:, None] - problem.effective(R, N[:, None].astype(float))), half * np.sin(t)
+
+    step = np.pi / _QUADRATURE
+    p2, weight = squared(inner, outer)
+    period = 2 * mu * np.sum(weight / np.sqrt(np.maximum(p2, 1e-12 * p2.max(axis=1)[:, None])), axis=1) * step
+    p2, weight = squared(outer, outside)
+    theta = np.sum(weight * np.sqrt(np.clip(-p2, 0, None)), axis=1) * step
+    return np.log1p(np.exp(-2 * theta)) / period
+
+
+def _outside(problem: RadialProblem, N: Ints, energy: Array, r_top: Array) -> Array:
+    """Outer turning point of the barrier [bohr]: V_eff falls from the top to E."""
+    low = r_top.copy()
+    high = np.maximum(2 * r_top, 2 * (N + 1) / np.sqrt(2 * problem.reduced_mass * energy))
+    for _ in range(60):
+        middle = 0.5 * (low + high)
+        above = problem.effective(middle, N.astype(float)) > energy
+        low, high = np.where(above, middle, low), np.where(above, high, middle)
+    return 0.5 * (low + high)
