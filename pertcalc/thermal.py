@@ -13,13 +13,28 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.interpolate import CubicSpline
 
-from pertcalc.constants import KELVIN_HARTREE
+from pertcalc.constants import AMU_AU, KELVIN_HARTREE
 
 Array = NDArray[np.float64]
 
 # Energies run from LOWEST kT of the coldest to HIGHEST kT of the hottest temperature, LOG_SPACING apart in ln E.
 LOWEST, HIGHEST = 0.03, 14.0
 LOG_SPACING = 0.36
+# Reduced mass [u] from which that spacing is dense enough.
+HEAVY = 10.0
+
+
+def energy_spacing(reduced_mass: float) -> float:
+    """Step of ln E for a pair [1]: LOG_SPACING, closer for light pairs.
+
+    With few partial waves sigma(E) undulates; light pairs are cheap and get more energies.
+
+    Parameters
+    ----------
+    reduced_mass : float
+        [electron masses].
+    """
+    return LOG_SPACING * min(1.0, float(np.sqrt(reduced_mass / (HEAVY * AMU_AU))))
 
 
 def energy_grid(temperatures: Array, spacing: float = LOG_SPACING, highest: float = HIGHEST) -> Array:

@@ -16,8 +16,8 @@ from pertcalc.collisions.multipoles import INDEX, OBSERVABLES
 from pertcalc.collisions.pair import CollisionPair
 from pertcalc.collisions.partial_waves import LEVELS, line_cross_section, multipole_cross_sections
 from pertcalc.collisions.semiclassical import CrossSections, reach, tails
-from pertcalc.constants import AMU_AU, KELVIN_HARTREE
-from pertcalc.thermal import LOG_SPACING, Average, effort, energy_grid, maxwell
+from pertcalc.constants import KELVIN_HARTREE
+from pertcalc.thermal import Average, effort, energy_grid, energy_spacing, maxwell
 
 Array = NDArray[np.float64]
 Key = tuple[str, ...]
@@ -34,7 +34,6 @@ LEAST_POINTS = 2.8
 CHECK_EVERY = 3
 CHECK_POINTS = 0.8
 CHECK_REACH = 0.92
-LIGHT = 10.0
 
 
 def _sections(pair: CollisionPair, level: str, energy: float, points: float, scale: float) -> tuple[Array, int, int]:
@@ -108,8 +107,7 @@ def level_tables(
     pair: CollisionPair, temperatures: Array, progress: Progress | None = None
 ) -> dict[str, CrossSections]:
     """Tables of both levels for these temperatures [K]; `progress` is called with (done, total)."""
-    spacing = LOG_SPACING * min(1.0, float(np.sqrt(pair.reduced_mass / (LIGHT * AMU_AU))))
-    energy = energy_grid(temperatures, spacing, HIGHEST)
+    energy = energy_grid(temperatures, energy_spacing(pair.reduced_mass), HIGHEST)
     points = np.maximum(LEAST_POINTS, POINTS * effort(energy, temperatures, 0.15, 0.5))
     tables = {}
     for i, level in enumerate(LEVELS):

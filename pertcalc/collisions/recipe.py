@@ -19,8 +19,8 @@ from numpy.typing import NDArray
 
 from pertcalc.collisions.pair import CollisionPair
 from pertcalc.collisions.semiclassical import CrossSections, cross_sections
-from pertcalc.constants import AMU_AU, KELVIN_HARTREE
-from pertcalc.thermal import LOG_SPACING, Average, balanced_transfer, effort, energy_grid, maxwell, mean_speed
+from pertcalc.constants import KELVIN_HARTREE
+from pertcalc.thermal import Average, balanced_transfer, effort, energy_grid, energy_spacing, maxwell, mean_speed
 
 Array = NDArray[np.float64]
 Progress = Callable[[int, int], None]
@@ -28,8 +28,6 @@ Key = tuple[str, ...]
 ThermalRates = Callable[[Mapping[str, CrossSections], float, float, float], dict[Key, Average]]
 
 FAMILIES = ("lower", "pi", "upper")
-# Reduced mass [u] from which the standard spacing of energies is dense enough.
-HEAVY = 10.0
 # Below this Massey parameter (Li, Na, K) energies lie closer by MIXED_SPACING.
 XI_MIXED = 15.0
 MIXED_SPACING = 0.6
@@ -151,8 +149,7 @@ def family_tables(
     dict
         CrossSections by family.
     """
-    # In light pairs few partial waves take part and sigma(E) undulates: they are cheap and get more energies.
-    spacing = LOG_SPACING * min(1.0, float(np.sqrt(pair.reduced_mass / (HEAVY * AMU_AU))))
+    spacing = energy_spacing(pair.reduced_mass)
     # Where the levels mix strongly, transfer undulates with E (two passages of the coupling interfere).
     slowest = float(mean_speed(temperatures.min(), pair.reduced_mass))
     if pair.splitting * R_COLLISION / slowest < XI_MIXED:
