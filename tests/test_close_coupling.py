@@ -16,11 +16,13 @@ from scipy.special import spherical_jn, spherical_yn
 
 from pertcalc.collisions import close_coupling
 from pertcalc.collisions.close_coupling import Matrices, ground_matrices, outer_phase, scattering_matrices
+from pertcalc.collisions.log_derivative import Blocks, propagate
 from pertcalc.collisions.pair import CollisionPair
 from pertcalc.curves.forms import LennardJones
 from pertcalc.errors import PertcalcError
 from tests.collision_cases import default_pair, model_k_ar, thermal
 from tests.test_channels import projector
+from tests.test_log_derivative import even_pieces, resonant_S
 
 # (pair, energy in P1/2 / splitting): below, just below, just above and well above the threshold of P3/2.
 CASES = [
@@ -114,6 +116,20 @@ def test_closed_channels_matter():
     away = replace(pair, splitting=1e3 * pair.splitting)  # P3/2 out of reach
     alone = scattering_matrices(away, 0.6 * pair.splitting, 14.0, 20.0, 4.0)
     assert np.abs(found.S["e"][:, 0, 0] - alone.S["e"][:, 0, 0]).max() > 0.5
+
+
+def test_closed_channels_are_matched_to_their_decay():
+    """Square well with one open and one closed channel, matched at its edge: the resonance in closed form."""
+    gap, depth, D, a = 5.0, 6.0, 1.0, 3.0
+    k2 = np.linspace(0.2, 4.6, 60)
+    momentum2 = np.stack([k2, k2 - gap, np.full_like(k2, -3.0)])
+    axis = np.repeat(np.sqrt([[0.5], [0.5], [0.0]]), k2.size, axis=1)
+    blocks = Blocks(momentum2, np.zeros((3, k2.size)), axis)
+    y, _ = propagate(blocks, lambda R: (0 * R - depth, 0 * R + D), even_pieces([1e-6, a], 0.01), 1e6)
+    S = close_coupling._match(y, np.zeros((3, k2.size)), momentum2, a)
+    wanted = [resonant_S(float(e), gap, depth, D, a, True) for e in k2]
+    np.testing.assert_allclose(S[:, 0, 0], wanted, atol=3e-5)
+    assert np.all(S[:, 1:] == 0) and np.all(S[:, :, 1:] == 0)
 
 
 # --- phases ---------------------------------------------------------------------------------------------------------
