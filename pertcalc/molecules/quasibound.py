@@ -9,14 +9,14 @@ notes/molecules.md.
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass, replace
 
 import numpy as np
 
 from pertcalc.molecules import siegert, tunnelling
 from pertcalc.molecules.levels import Ints, Levels, turning_points
-from pertcalc.molecules.radial import Array, RadialProblem
-from pertcalc.molecules.tunnelling import Barriers
+from pertcalc.molecules.radial import Array, Potential, RadialProblem
 
 # Below this width in units of the barrier height no energy grid resolves the delay: flux and WKB serve.
 NARROW = 1e-7
@@ -31,7 +31,9 @@ class QuasiLevels:
     ``v``, ``N``; ``energy`` [hartree, > 0] from the limit; ``barrier`` height [hartree] of that N; ``inner``, ``outer``
     turning points of the well [bohr]; ``width`` full width at half maximum [hartree], the delay's where ``by_delay``,
     else the flux's; ``width_flux``, ``width_wkb`` [hartree], nan for a level in an inner well behind a second barrier;
-    ``width_delay`` [hartree], nan where too narrow for it.
+    ``width_delay`` [hartree], nan where too narrow for it; ``model_error`` of the energies [hartree] by the curves'
+    stated uncertainties, in first order (nan: not known), None where none is stated; ``numerical_error`` [hartree]
+    the largest change of an energy by a step half as long.
     """
 
     v: Ints
@@ -43,6 +45,8 @@ class QuasiLevels:
     width_flux: Array
     width_wkb: Array
     width_delay: Array
+    model_error: Array | None
+    numerical_error: float
 
     @property
     def by_delay(self) -> Array:
@@ -55,16 +59,13 @@ class QuasiLevels:
         """Full width [hartree] by the way that holds."""
         return np.where(self.by_delay, self.width_delay, self.width_flux)
 
-    @property
-    def remark(self) -> str:
-        """What the widths are worth."""
-        return (
-            "delay: Lorentzian in d(phase)/dE; flux: outgoing flux over probability inside the barrier (exact for "
-            "narrow levels); WKB: attempt frequency times tunnelling probability"
-        )
 
-
-def quasibound_levels(problem: RadialProblem, levels: Levels, delays: bool = True) -> QuasiLevels:
+def quasibound_levels(
+    problem: RadialProblem,
+    levels: Levels,
+    deformed: Mapping[str, tuple[Potential, float]] | None = None,
+    delays: bool = True,
+) -> QuasiLevels:
     """Every quasi-bound level between the limit and the top of its centrifugal barrier.
 
     Parameters
@@ -72,6 +73,8 @@ def quasibound_levels(problem: RadialProblem, levels: Levels, delays: bool = Tru
     problem : RadialProblem
     levels : Levels
         Bound levels of the same problem, all N: they fix v.
+    deformed : mapping, optional
+        Name -> (V(R) changed by one standard deviation, its C6); gives the model error.
     delays : bool
         Whether to compute the widths from the delay as well.
 
@@ -80,22 +83,29 @@ def quasibound_levels(problem: RadialProblem, levels: Levels, delays: bool = Tru
     QuasiLevels
     """
     barriers = tunnelling.barriers(problem)
-    N, v, guess, walled = tunnelling.candidates(problem, barriers, levels)
-    if not N.size:
+    if not barriers.N.size:
         return _none()
-    index = np.searchsorted(barriers.N, N)
+    changes = [changed for changed, _ in (deformed or {}).values()]
+    sought = tunnelling.candidates(problem, barriers, levels, changes)
+    if not sought.N.size:
+        return _none()
+    index = np.searchsorted(barriers.N, sought.N)
     height, top, well = barriers.height[index], barriers.r_top[index], barriers.r_well[index]
-    found = siegert.solve(problem, N, guess, top, height, well)
-    sound = found.converged & (found.energy > 0) & (found.energy < height) & (found.nodes == v)
+    found = siegert.solve(problem, sought.N, sought.energy, top, height, well)
+    sound = found.converged & (found.energy > 0) & (found.energy < height) & (found.nodes == sought.v)
     # A level of a second, inner well may be out of reach of the outgoing wave: the spectrum with the wall has it.
-    energy = np.where(sound, found.energy, guess)
-    kept = sound | walled
-    N, v, energy, height, top, well, sound = (one[kept] for one in (N, v, energy, height, top, well, sound))
+    kept = np.flatnonzero(sound | (sought.sure & (sought.energy > 0)))
+    # Two starts may lead to one level.
+    kept = kept[np.unique(np.stack([sought.N[kept], sought.v[kept]]), axis=1, return_index=True)[1]]
+    energy = np.where(sound, found.energy, sought.energy)[kept]
+    N, v, height, top, well, sound = (one[kept] for one in (sought.N, sought.v, height, top, well, sound))
     flux = np.where(sound, found.width[kept], np.nan)
+    error = float(np.max(found.error[kept], initial=0.0, where=sound))
     inner, outer = turning_points(problem, N.astype(float), energy)
     wkb = np.where(sound, tunnelling.wkb_widths(problem, N, energy, inner, outer, top), np.nan)
-    made = QuasiLevels(v, N, energy, height, inner, outer, flux, wkb, np.full(len(N), np.nan))
-    return _with_delays(problem, made, top, well) if delays else made
+    model = sought.model_error[kept] if changes else None
+    made = QuasiLevels(v, N, energy, height, inner, outer, flux, wkb, np.full(len(N), np.nan), model, error)
+    return _with_delays(problem, made, top, well) if delays and len(N) else made
 
 
 def _with_delays(problem: RadialProblem, made: QuasiLevels, top: Array, well: Array) -> QuasiLevels:
@@ -111,7 +121,5 @@ def _with_delays(problem: RadialProblem, made: QuasiLevels, top: Array, well: Ar
 
 def _none() -> QuasiLevels:
     empty, none = np.zeros(0), np.zeros(0, dtype=np.int64)
-    return QuasiLevels(none, none, empty, empty, empty, empty, empty, empty, empty)
+    return QuasiLevels(none, none, empty, empty, empty, empty, empty, empty, empty, None, 0.0)
 
-
-__all__ = ["Barriers", "QuasiLevels", "quasibound_levels"]

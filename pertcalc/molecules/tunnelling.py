@@ -14,7 +14,7 @@ from numpy.typing import NDArray
 
 from pertcalc.molecules.grid import mapped_grid
 from pertcalc.molecules.levels import Ints, Levels, well_and_barrier
-from pertcalc.molecules.radial import R_FAR, Array, RadialProblem
+from pertcalc.molecules.radial import R_FAR, Array, Potential, RadialProblem
 
 _ACTION_ENERGIES = 41
 _ACTION_POINTS = 4000
@@ -23,6 +23,8 @@ _QUADRATURE = 60
 _ABOVE = 0.5
 # They start this part of the barrier's height below its top.
 _BELOW_TOP = 0.02
+# A level of the spectrum with the wall is real if no more than this part of it stands at the wall.
+_AT_WALL = 1e-3
 
 
 @dataclass(frozen=True, slots=True)
@@ -67,45 +69,68 @@ def barriers(problem: RadialProblem) -> Barriers:
     return Barriers(columns[0].astype(np.int64), columns[1], columns[2], columns[3], columns[4])
 
 
-def candidates(problem: RadialProblem, found: Barriers, levels: Levels) -> tuple[Ints, Ints, Array, NDArray[np.bool_]]:
-    """Energies between limit and barrier from which to seek the levels.
+@dataclass(frozen=True, slots=True)
+class Candidates:
+    """Where to seek quasi-bound levels; arrays of shape (n,).
+
+    ``N``, ``v``; ``energy`` [hartree] to start from: that of the spectrum with a hard wall at the barrier's top, and
+    besides, where the level reaches the wall, one that fits the WKB phase; ``sure`` marks levels that do not reach the
+    wall: they exist whatever the search finds; ``model_error`` first-order change of the energy by the curves' uncertainties [hartree], nan where
+    unknown.
+    """
+
+    N: Ints
+    v: Ints
+    energy: Array
+    sure: NDArray[np.bool_]
+    model_error: Array
+
+
+def candidates(problem: RadialProblem, found: Barriers, levels: Levels, changes: list[Potential]) -> Candidates:
+    """Every (v, N) that may be quasi-bound.
 
     Parameters
     ----------
     problem : RadialProblem
     found : Barriers
     levels : Levels
-        Bound levels of all N.
+        Bound levels of all N: v goes on where they end.
+    changes : list of callable
+        V(R) [hartree] moved by one standard deviation each; may be empty.
 
     Returns
     -------
-    N, v : ndarray of int, shape (n,)
-    energy : ndarray, shape (n,)
-        [hartree]: of the spectrum with a hard wall at the barrier's top, exact for narrow levels; above its last level
-        those that fit the WKB phase, or a point just below the top where WKB puts them slightly above it.
-    walled : ndarray of bool, shape (n,)
-        True where the spectrum with the wall has the level: it exists.
+    Candidates
     """
     grid = mapped_grid(problem, max(levels.points, 1))
+    potential = problem.potential(grid.R)
+    moved = np.array([change(grid.R) - potential for change in changes])
     bound = np.bincount(levels.N, minlength=int(found.N.max(initial=0)) + 1)
     rows = []
     for N, height, r_top, depth in zip(found.N, found.height, found.r_top, found.depth, strict=True):
         inside = int(np.searchsorted(grid.R, r_top))
         H = grid.kinetic[:inside, :inside] + np.diag(problem.effective(grid.R[:inside], float(N)))
-        walled = np.linalg.eigvalsh(H)
-        walled = walled[walled < height]
-        rows += [(N, v, E, True) for v, E in enumerate(walled) if v >= bound[N]]
+        walled, vectors = np.linalg.eigh(H)
+        errors = np.full(inside, np.nan)
+        if changes:
+            errors = np.sqrt(np.sum((moved[:, :inside] @ vectors**2) ** 2, axis=0))
+        count = int(np.count_nonzero(walled < height))
         low = max(depth, 0.0)
         E = low + (height - low) * np.linspace(0, 1, _ACTION_ENERGIES)
         number = _wkb_number(problem, N, E, r_top)
         edge = _BELOW_TOP * (height - low)
-        more = range(max(len(walled), bound[N]), int(np.floor(number[-1] + _ABOVE)) + 1)
-        rows += [(N, v, np.clip(np.interp(v, number, E), low + edge, height - edge), False) for v in more]
-    if not rows:
-        none = np.zeros(0, dtype=np.int64)
-        return none, none, np.zeros(0), np.zeros(0, dtype=bool)
-    columns = [np.array(column) for column in zip(*rows, strict=True)]
-    return columns[0].astype(np.int64), columns[1].astype(np.int64), columns[2], columns[3]
+        for v in range(bound[N], max(count, int(np.floor(number[-1] + _ABOVE)) + 1)):
+            sure = v < count and vectors[-1, v] ** 2 < _AT_WALL
+            error = errors[min(v, count - 1)] if count else np.nan
+            if v < count:
+                rows.append((N, v, walled[v], sure, error))
+            if not sure:
+                phase = np.clip(np.interp(v, number, E), low + edge, height - edge)
+                rows.append((N, v, phase, False, error))
+    columns = np.array(rows, dtype=float).reshape(-1, 5).T
+    return Candidates(
+        columns[0].astype(np.int64), columns[1].astype(np.int64), columns[2], columns[3].astype(bool), columns[4]
+    )
 
 
 def _wkb_number(problem: RadialProblem, N: int, E: Array, r_top: float) -> Array:
