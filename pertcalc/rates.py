@@ -31,6 +31,11 @@ Progress = Callable[[int, int], None]
 T_LOWEST, T_HIGHEST = 20.0, 2000.0
 # Differences of grids can vanish by chance; no rate is called better than this.
 NUMERICAL_FLOOR = 0.002
+# A shift may be small by cancellation: its error is at least this share of the full width.
+SHIFT_FLOOR = 0.001
+# (first, every, weight): the energy grids whose averages are compared with the full one. A third of the energies
+# misses more than a half does: its change counts less.
+THINNINGS = ((0, 2, 1.0), (1, 2, 1.0), (0, 3, 1 / 3), (1, 3, 1 / 3))
 # What makes the tables of a method and what turns them into rates.
 DYNAMICS: dict[str, tuple[Callable[..., dict[str, CrossSections]], ThermalRates]] = {
     "semiclassical": (recipe.family_tables, recipe.thermal_rates),
@@ -135,23 +140,24 @@ def collision_rates(
 
 
 def _variants(tables: Mapping[str, CrossSections]) -> list[Mapping[str, CrossSections]]:
-    """The same tables with every second impact parameter, the step error added, and every second energy (both ways)."""
+    """The same tables with every second impact parameter, the step error added, and on four thinner energy grids."""
     return [
         {name: replace(t, sigma=t.half_grid) for name, t in tables.items()},
         {name: replace(t, sigma=t.sigma + t.step_change) for name, t in tables.items()},
-        {name: t.thinned(0) for name, t in tables.items()},
-        {name: t.thinned(1) for name, t in tables.items()},
+        *({name: t.thinned(first, every) for name, t in tables.items()} for first, every, _ in THINNINGS),
     ]
 
 
-def numerical_error(rate: Array, variants: list[Array]) -> Array:
+def numerical_error(rate: Array, variants: list[Array], least: Array | float = 0.0) -> Array:
     """Relative numerical error [1] of rates from the same rates on the tables of `_variants`, shape of rate.
 
-    The change with every second impact parameter, the step error, and the larger of the changes with the even and with
-    the odd energies (an undulation of sigma(E) may hide from one of them), added; never below NUMERICAL_FLOOR.
+    The change with every second impact parameter, the step error and the largest change on a thinner energy grid (an
+    undulation of sigma(E) may hide from one of them; weights as in THINNINGS), added; never below NUMERICAL_FLOOR nor
+    the absolute `least`.
     """
-    half, step, even, odd = (np.abs(variant - rate) for variant in variants)
-    total = half + step + np.maximum(even, odd)
+    half, step, *thinned = (np.abs(variant - rate) for variant in variants)
+    energies = np.max([weight * change for (*_, weight), change in zip(THINNINGS, thinned, strict=True)], axis=0)
+    total = np.maximum(half + step + energies, least)
     return np.maximum(total / np.maximum(np.abs(rate), 1e-300), NUMERICAL_FLOOR)
 
 
@@ -169,7 +175,9 @@ def assemble(
 
     def coefficient(key: Key, unit: str) -> Coefficient:
         rate = np.array([a.rate for a in best[key]])
-        error = numerical_error(rate, [np.array([a.rate for a in other[key]]) for other in others])
+        width = [a.rate for a in best["fwhm", key[1]]] if key[0] == "shift" else [0.0]
+        variants = [np.array([a.rate for a in other[key]]) for other in others]
+        error = numerical_error(rate, variants, SHIFT_FLOOR * np.array(width))
         exponent = np.array([a.exponent for a in best[key]])
         return Coefficient(unit, rate * AU_RATE_CM3_S, error, model[key], exponent)
 

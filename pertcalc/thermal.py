@@ -21,7 +21,7 @@ Array = NDArray[np.float64]
 LOWEST, HIGHEST = 0.03, 14.0
 LOG_SPACING = 0.36
 # Reduced mass [u] from which that spacing is dense enough.
-HEAVY = 10.0
+HEAVY = 20.0
 
 
 def energy_spacing(reduced_mass: float) -> float:

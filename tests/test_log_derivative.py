@@ -358,9 +358,6 @@ def energy_of_a_node(D: float) -> float:
     return float(low)
 
 
-@pytest.mark.xfail(
-    strict=True, reason="cofactors lose (1e-16 x largest element^2) next to a node: S of a block is spoilt"
-)
 def test_a_node_on_a_grid_point_does_no_harm():
     """Log-derivatives are smooth in energy at the end, however close to a grid point a node falls on the way.
 

@@ -14,8 +14,9 @@ from numpy.typing import NDArray
 from scipy.special import spherical_jn, spherical_yn
 
 from pertcalc.collisions.channels import Channels, channels
-from pertcalc.collisions.log_derivative import POINTS_PER_RADIAN, Blocks, Symmetric, propagate, segments
+from pertcalc.collisions.log_derivative import POINTS_PER_RADIAN, Blocks, full, propagate, segments
 from pertcalc.collisions.pair import R_END, CollisionPair
+from pertcalc.errors import InputError, OutOfRangeError
 
 Array = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
@@ -25,6 +26,8 @@ PARITIES = ("e", "f")
 FORBIDDEN = 16.0
 R_SMALLEST = 1.5
 BARRIER = 0.5
+LARGEST_DRESSING = 0.1
+ADIABATIC = 20.0
 # Blocks that share a start: enough to amortise numpy's calls, few enough not to start all at the smallest R.
 GROUP = 400
 
@@ -55,8 +58,17 @@ def _start(minimum: Callable[[Array], Array], energy: float, mass: float, least:
     R = np.linspace(R_SMALLEST, end, 1500)
     decay = np.sqrt(np.maximum(2 * mass * (minimum(R) - energy) + least / R**2, 0))
     allowed = np.flatnonzero(decay == 0)
-    if allowed.size == 0 or allowed[0] == 0:
+    if allowed.size == 0:
         return float(R[0])
+    if allowed[0] == 0:
+        raise OutOfRangeError(
+            "collision energy",
+            energy,
+            0.0,
+            float(minimum(R[:1])[0]),
+            "hartree",
+            f"The curve has no repulsive wall of that height at {R_SMALLEST} bohr; extend it or lower the energy.",
+        )
     inside = np.cumsum(decay[: allowed[0]][::-1]) * (R[1] - R[0])
     steps = int(np.searchsorted(inside, FORBIDDEN))
     return float(R[max(allowed[0] - 1 - steps, 0)])
@@ -75,15 +87,29 @@ def _free(N: Array, k: Array, R: float) -> tuple[Array, Array, Array, Array]:
     return z * j / root, z * n / root, (j + z * dj) * root, (n + z * dn) * root
 
 
-def _full(y: Symmetric) -> Array:
-    """Symmetric components as matrices, shape (n, 3, 3)."""
-    matrix = np.empty((y[0].size, 3, 3))
-    for (i, j), value in zip(((0, 0), (1, 1), (2, 2), (0, 1), (0, 2), (1, 2)), y, strict=True):
-        matrix[:, i, j] = matrix[:, j, i] = value
-    return matrix
+def _dressed(Y: Array, blocks: Blocks, difference: float, R: float) -> Array:
+    """Log-derivatives in the levels as the coupling that is left at R mixes them, shape (n, 3, 3).
+
+    Matched to bare levels, that coupling (2 mu D(R) t_i t_j against the gap of the local momenta) would exchange
+    population between P1/2 and P3/2 that it takes back further out; for widely split levels that is all there would be.
+    Only levels that follow adiabatically from there on are dressed: splitting R/v above ADIABATIC, and a small angle;
+    for others the exchange is real.
+    """
+    t = blocks.axis
+    turn = np.zeros_like(Y)
+    local = blocks.momentum2 - blocks.centrifugal / R**2
+    for j in (1, 2):
+        split = blocks.momentum2[0] - blocks.momentum2[j]
+        gap = local[0] - local[j]
+        follows = split * R > 2 * ADIABATIC * np.sqrt(np.abs(blocks.momentum2[0]))
+        angle = difference * t[0] * t[j] / np.where(gap > 0, gap, 1.0)
+        angle = np.where(follows & (gap > 0) & (np.abs(angle) < LARGEST_DRESSING), angle, 0.0)
+        turn[:, 0, j], turn[:, j, 0] = -angle, angle
+    U = np.eye(3) + turn + 0.5 * turn @ turn
+    return U @ Y @ U.swapaxes(1, 2)
 
 
-def _match(y: Symmetric, N: Array, momentum2: Array, R: float) -> ComplexArray:
+def _match(Y: Array, N: Array, momentum2: Array, R: float) -> ComplexArray:
     """S from the log-derivative at R; closed channels fall off by their local decay and drop out (S = 0 there)."""
     # A slow channel whose centrifugal barrier still stands at twice its energy there is not reached either.
     is_open = momentum2 > np.maximum(BARRIER * N * (N + 1) / R**2, 0)
@@ -97,7 +123,6 @@ def _match(y: Symmetric, N: Array, momentum2: Array, R: float) -> ComplexArray:
         return values.T[:, :, None] * np.eye(3)
 
     # psi = regular - other K, and psi' = y psi.
-    Y = _full(y)
     K = np.linalg.solve(Y @ diagonal(other) - diagonal(other_slope), Y @ diagonal(regular) - diagonal(slope))
     both = (is_open.T[:, :, None] & is_open.T[:, None, :]).astype(float)
     K = K * both
@@ -126,7 +151,18 @@ def scattering_matrices(
     -------
     Matrices
         Unitary and symmetric to about 1e-12.
+
+    Raises
+    ------
+    InputError
+        No open channel, or waves that end beyond the matching distance.
+    OutOfRangeError
+        A curve without a wall that stops this energy.
     """
+    if not energy > 0 or not 0 < last <= r_match:
+        raise InputError(
+            f"energy = {energy:g} hartree must be > 0, and 0 < last = {last:g} <= r_match = {r_match:g} bohr"
+        )
     mass = pair.reduced_mass
     k2 = (2 * mass * energy, 2 * mass * (energy - pair.splitting))
     fastest = np.sqrt(k2[0])
@@ -150,7 +186,8 @@ def scattering_matrices(
         pieces = segments(_local_momentum(minimum, energy, mass), start, r_match, points)
         y, count = propagate(blocks, potential, pieces, 3 * fastest)
         inversions += count
-        matrices = _match(y, N, blocks.momentum2, r_match)
+        difference = float(potential(np.array([r_match]))[1][0])
+        matrices = _match(_dressed(full(y), blocks, difference, r_match), N, blocks.momentum2, r_match)
         for i, parity in enumerate(PARITIES):
             S[parity][some] = matrices[i * some.size : (i + 1) * some.size]
     return Matrices(total, S, {parity: found[parity].partial for parity in PARITIES}, k2, inversions)
@@ -225,7 +262,7 @@ def ground_matrices(
         pieces = segments(_local_momentum(ground, step_energy, mass), start, r_match, points)
         y, count = propagate(blocks, potential, pieces, 3 * float(np.sqrt(2 * mass * energy)))
         inversions += count
-        S[:, some] = np.einsum("nii->in", _match(y, N[:, some], momentum2, r_match))
+        S[:, some] = np.einsum("nii->in", _match(full(y), N[:, some], momentum2, r_match))
     return S.T.ravel()[: highest + 1], inversions
 
 

@@ -22,7 +22,7 @@ POINTS_PER_TURN = 3.0
 POINTS_PER_FOLD = 12.0
 # A phase that turns faster than this per partial wave (curves without a wall, orbiting) is random: more points would
 # only average it better.
-MOST_PER_WAVE = 40.0
+MOST_PER_WAVE = 200.0
 # The scan and the grid reach this many Weisskopf radii; Born tails follow.
 REACH = 3.0
 _SCAN_POINTS = 420

@@ -21,6 +21,10 @@ Symmetric = tuple[Array, Array, Array, Array, Array, Array]
 POINTS_PER_RADIAN = 5.0
 # Length of the pieces with one step size [bohr].
 _SEGMENT = 1.0
+# Where the elements of a symmetric matrix stand.
+PLACES = ((0, 0), (1, 1), (2, 2), (0, 1), (0, 2), (1, 2))
+# A determinant this much smaller than its first term has lost too many digits.
+CANCELLED = 1e-4
 
 
 @dataclass(frozen=True, slots=True)
@@ -33,13 +37,19 @@ class Blocks:
 
 
 def inverse(A: Symmetric) -> Symmetric:
-    """Inverses of symmetric 3x3 matrices by cofactors, shapes as given."""
+    """Inverses of symmetric 3x3 matrices by cofactors, shapes as given.
+
+    Next to a node of the wave function A is nearly singular and its successor nearly of rank one and huge: cofactors
+    then lose all digits. Such matrices (one in some thousands) are done again by LU decomposition.
+    """
     a11, a22, a33, a12, a13, a23 = A
     c11 = a22 * a33 - a23 * a23
     c12 = a13 * a23 - a12 * a33
     c13 = a12 * a23 - a13 * a22
-    scale = 1 / (a11 * c11 + a12 * c12 + a13 * c13)
-    return (
+    first = a11 * c11
+    determinant = first + a12 * c12 + a13 * c13
+    scale = 1 / determinant
+    B = (
         c11 * scale,
         (a11 * a33 - a13 * a13) * scale,
         (a11 * a22 - a12 * a12) * scale,
@@ -47,6 +57,20 @@ def inverse(A: Symmetric) -> Symmetric:
         c13 * scale,
         (a12 * a13 - a11 * a23) * scale,
     )
+    spoilt = np.flatnonzero(np.abs(determinant) < CANCELLED * np.abs(first))
+    if spoilt.size:
+        exact = np.linalg.inv(full(tuple(element[spoilt] for element in A)))  # type: ignore[arg-type]
+        for element, (i, j) in zip(B, PLACES, strict=True):
+            element[spoilt] = exact[:, i, j]
+    return B
+
+
+def full(y: Symmetric) -> Array:
+    """Symmetric components as matrices, shape (n, 3, 3)."""
+    matrix = np.empty((y[0].size, 3, 3))
+    for (i, j), value in zip(PLACES, y, strict=True):
+        matrix[:, i, j] = matrix[:, j, i] = value
+    return matrix
 
 
 def segments(

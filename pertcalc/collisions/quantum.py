@@ -28,7 +28,7 @@ LAST_REACH = 1.8
 MATCH_REACH = 2.2
 POINTS = 4.0
 # Fast collisions are the costliest and count least: the grid ends here [kT] and the step grows with falling weight.
-HIGHEST = 12.0
+HIGHEST = 14.0
 LEAST_POINTS = 2.8
 # The check of every CHECK_EVERY-th energy: fewer points and a shorter reach.
 CHECK_EVERY = 3

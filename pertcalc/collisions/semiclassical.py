@@ -58,14 +58,14 @@ class CrossSections:
         """Cross section of one observable, shape (n,) [bohr^2]."""
         return self.sigma[:, INDEX[name]]
 
-    def thinned(self, first: int) -> CrossSections:
-        """The table at every second energy, from number `first` (0 or 1) on."""
+    def thinned(self, first: int, every: int) -> CrossSections:
+        """The table at every second, third ... energy, from number `first` on."""
         return replace(
             self,
-            energy=self.energy[first::2],
-            sigma=self.sigma[first::2],
-            half_grid=self.half_grid[first::2],
-            step_change=self.step_change[first::2],
+            energy=self.energy[first::every],
+            sigma=self.sigma[first::every],
+            half_grid=self.half_grid[first::every],
+            step_change=self.step_change[first::every],
         )
 
 
