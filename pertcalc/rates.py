@@ -18,7 +18,7 @@ from pertcalc.collisions.semiclassical import CrossSections
 from pertcalc.constants import AU_RATE_CM3_S, KELVIN_HARTREE
 from pertcalc.curves import files
 from pertcalc.curves.curveset import CurveSet
-from pertcalc.errors import InputError, OutOfRangeError, UnknownNameError
+from pertcalc.errors import InputError, NotConvergedError, OutOfRangeError, UnknownNameError
 from pertcalc.model_error import model_errors
 from pertcalc.names import METHODS
 from pertcalc.results import LEVEL_UNIT, LINE_UNIT, Coefficient, CollisionRates
@@ -29,6 +29,8 @@ Progress = Callable[[int, int], None]
 
 # Below this the classical paths mean nothing: the de Broglie wavelength is as long as the collision [K].
 T_LOWEST, T_HIGHEST = 20.0, 2000.0
+# Relative numerical error of a width beyond which nothing is answered (exit code 3).
+WIDTH_WANTED = 0.1
 # Differences of grids can vanish by chance; no rate is called better than this.
 NUMERICAL_FLOOR = 0.002
 # A shift may be small by cancellation: its error is at least this share of the full width.
@@ -125,6 +127,8 @@ def collision_rates(
     Raises
     ------
     UnknownNameError, InputError, DataFileError, OutOfRangeError
+    NotConvergedError
+        The numerical error of a width exceeds 10 %.
     """
     T = temperatures_of(temperature)
     if method not in METHODS:
@@ -161,6 +165,20 @@ def numerical_error(rate: Array, variants: list[Array], least: Array | float = 0
     return np.maximum(total / np.maximum(np.abs(rate), 1e-300), NUMERICAL_FLOOR)
 
 
+def require_converged(what: str, coefficient: Coefficient) -> None:
+    """NotConvergedError, with the best value and its error, where the numerical error of a width exceeds WIDTH_WANTED.
+
+    A width is the sturdiest of all rates: when it fails, the curves are not what the grids were made for. Small rates
+    (shifts near zero, tiny transfers) may have large relative errors; they are shown, not refused.
+    """
+    errors = coefficient.numerical_error
+    if errors is None or coefficient.values is None:
+        return
+    worst = int(np.argmax(errors))
+    if not errors[worst] <= WIDTH_WANTED:
+        raise NotConvergedError(what, float(coefficient.values[worst]), float(errors[worst]), WIDTH_WANTED)
+
+
 def assemble(
     curves: CurveSet,
     pair: CollisionPair,
@@ -181,6 +199,9 @@ def assemble(
         exponent = np.array([a.exponent for a in best[key]])
         return Coefficient(unit, rate * AU_RATE_CM3_S, error, model[key], exponent)
 
+    widths = {line: coefficient(("fwhm", line), LINE_UNIT) for line in LINES}
+    for line, width in widths.items():
+        require_converged(f"full width of {line}", width)
     work = {name: sum(table.work[name] for table in tables.values()) for name in next(iter(tables.values())).work}
     return CollisionRates(
         alkali=curves.alkali,
@@ -190,7 +211,7 @@ def assemble(
         curves_sha256=curves.sha256,
         temperatures=temperatures,
         reduced_mass=pair.reduced_mass,
-        fwhm={line: coefficient(("fwhm", line), LINE_UNIT) for line in LINES},
+        fwhm=widths,
         shift={line: coefficient(("shift", line), LINE_UNIT) for line in LINES},
         multipole_loss={
             level: {K: coefficient(("loss", level, str(K)), LEVEL_UNIT) for K in ranks}

@@ -18,8 +18,9 @@ from pertcalc.collisions.lindholm_foley import lindholm_foley_thermal
 from pertcalc.collisions.pair import pair_of
 from pertcalc.constants import AU_RATE_CM3_S, HARTREE_CM1, KELVIN_HARTREE
 from pertcalc.curves import files
-from pertcalc.errors import InputError, OutOfRangeError, PertcalcError, UnknownNameError
-from pertcalc.rates import collision_rates
+from pertcalc.errors import InputError, NotConvergedError, OutOfRangeError, PertcalcError, UnknownNameError
+from pertcalc.rates import collision_rates, require_converged
+from pertcalc.results import Coefficient
 from pertcalc.species import alkali
 from tests.collision_cases import default_pair
 
@@ -254,3 +255,15 @@ def test_progress_is_told():
     assert seen and all(0 < done <= total for done, total in seen)
     shares = [done / total for done, total in seen]
     assert shares == sorted(shares) and shares[-1] == 1.0
+
+
+def test_a_width_that_did_not_converge_is_refused_with_its_best_value():
+    """Exit code 3, the best value and its error; below the limit, or for a rate without value, nothing happens."""
+    bad = Coefficient("rad s^-1 cm^3", np.array([4e-9, 5e-9]), np.array([0.01, 0.3]))
+    with pytest.raises(NotConvergedError, match="best 5e-09, estimated relative error 0.3, wanted 0.1") as caught:
+        require_converged("full width of D1", bad)
+    assert (caught.value.exit_code, caught.value.best) == (3, 5e-9)
+    with pytest.raises(NotConvergedError):
+        require_converged("full width of D1", Coefficient("", np.array([1.0]), np.array([np.nan])))
+    require_converged("full width of D1", Coefficient("", np.array([1.0]), np.array([0.09])))
+    require_converged("full width of D1", Coefficient("", None))
