@@ -10,6 +10,7 @@ from typing import Any
 import click
 
 from pertcalc import __version__
+from pertcalc.cli_molecule import molecule
 from pertcalc.cli_options import (
     QUANTITIES,
     AnyGas,
@@ -265,6 +266,9 @@ def curves(
         click.echo(f"wrote {place}", err=True)
         return
     deliver(curves_text.shown(chosen, as_json, as_csv), output, force)
+
+
+cli.add_command(molecule)
 
 
 @cli.command(short_help="Published checks, exact laws, and every measured value beside ours.")

@@ -29,10 +29,12 @@ LAYERS = [
     "closed",
     "model_error",
     "rates",
+    "molecules",
     "vapour",
     "validation",
     "report",
     "cli_options",  # words only
+    "cli_molecule",
     "cli",
     "__main__",
 ]

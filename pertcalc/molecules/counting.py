@@ -61,6 +61,7 @@ def node_counts(problem: RadialProblem, finer: float = 1.0) -> tuple[Ints, float
     Returns
     -------
     nodes : ndarray of int, shape (largest_rotation + 1,)
+        Levels [1].
     length : float
         [bohr]
     """
@@ -159,7 +160,7 @@ def _spectral_remarks(spectral: Ints, nodes: Ints, length: float) -> list[str]:
     remarks = []
     for N in np.flatnonzero(spectral != nodes):
         if N == 0 and abs(length) > _RESOLVED_LENGTH:
-            why = f"the scattering length of {length:.3g} bohr puts a level at the limit, beyond the grid of the spectrum"
+            why = f"the scattering length of {length:.3g} bohr puts a level at the limit, out of reach of the spectrum"
         else:
             why = "a level lies so close to the limit that the grid of the spectrum does not resolve it"
         remarks.append(f"N = {N}: {spectral[N]} by the spectrum, {nodes[N]} by nodes; {why}")

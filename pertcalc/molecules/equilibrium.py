@@ -15,7 +15,7 @@ import numpy as np
 from scipy.special import erf, gammainc
 
 from pertcalc.constants import KELVIN_HARTREE
-from pertcalc.molecules.levels import Levels, well_and_barrier
+from pertcalc.molecules.levels import Ints, Levels, well_and_barrier
 from pertcalc.molecules.quasibound import QuasiLevels
 from pertcalc.molecules.radial import R_FAR, Array, Potential, RadialProblem
 
@@ -73,7 +73,7 @@ def thermal_volume(reduced_mass: float, temperature: float) -> float:
     return float((2 * pi / (reduced_mass * temperature * KELVIN_HARTREE)) ** 1.5)
 
 
-def state_sum(N: Array, energy: Array, temperature: float) -> float:
+def state_sum(N: Ints, energy: Array, temperature: float) -> float:
     """``sum (2N+1) exp(-E/kT)`` [1] over levels of rotation N [1] and energy [hartree] at ``temperature`` [K]."""
     return float(np.sum((2 * N + 1) * np.exp(-energy / (temperature * KELVIN_HARTREE))))
 

@@ -12,6 +12,7 @@ from pertcalc.constants import HARTREE_CM1
 from pertcalc.errors import InputError, NotConvergedError, OutOfRangeError
 from pertcalc.molecules.grid import DENSITY, R_OUT, MappedGrid, mapped_grid, points_needed
 from pertcalc.molecules.radial import R_FAR, Array, Potential, RadialProblem
+from pertcalc.molecules.spectrum import eigen
 
 Ints = NDArray[np.int64]
 
@@ -61,7 +62,6 @@ class Levels:
 
 def bound_levels(
     problem: RadialProblem,
-    rotation: int | None = None,
     points: int | None = None,
     deformed: Mapping[str, tuple[Potential, float]] | None = None,
 ) -> Levels:
@@ -70,8 +70,6 @@ def bound_levels(
     Parameters
     ----------
     problem : RadialProblem
-    rotation : int, optional
-        Only this N; None for all.
     points : int, optional
         Grid points; None takes what the well needs.
     deformed : mapping, optional
@@ -85,21 +83,18 @@ def bound_levels(
     Raises
     ------
     InputError
-        Fewer points than the well needs, or N < 0.
+        Fewer points than the well needs.
     OutOfRangeError
-        N so large that the effective potential has no level, or a well that needs more than MAX_POINTS.
+        A well that needs more than MAX_POINTS.
     NotConvergedError
         A denser grid moves a level by more than TOLERANCE of the depth.
     """
-    if rotation is not None and rotation < 0:
-        raise InputError(f"rotation N = {rotation} must be >= 0; give another value.")
     if not problem.has_well:
         return _collect([], problem, deformed, 0.0, 0)
-    wanted = [rotation] if rotation is not None else range(problem.largest_rotation + 1)
     n = grid_size(problem, points)
     while True:
         grid = mapped_grid(problem, n)
-        blocks = _diagonalise(problem, grid, wanted)
+        blocks = _diagonalise(problem, grid, range(problem.largest_rotation + 1))
         error = _grid_error(problem, n, blocks)
         if error <= TOLERANCE * problem.depth:
             break
@@ -109,8 +104,6 @@ def bound_levels(
             what = f"the lowest level [cm^-1] on {n} grid points (errors in units of the well depth)"
             raise NotConvergedError(what, best, error / problem.depth, TOLERANCE)
         n = int(GROWTH * n)
-    if rotation is not None and not blocks:
-        _refuse(problem, grid, rotation)
     return _collect(blocks, problem, deformed, error, n, grid)
 
 
@@ -137,22 +130,6 @@ def grid_size(problem: RadialProblem, points: int | None) -> int:
     return points
 
 
-def _refuse(problem: RadialProblem, grid: MappedGrid, rotation: int) -> None:
-    """Say where the levels end."""
-    blocks = _diagonalise(problem, grid, range(problem.largest_rotation + 1))
-    highest = max((N for N, _, _ in blocks), default=-1)
-    if highest < 0:
-        return
-    raise OutOfRangeError(
-        "rotation N",
-        rotation,
-        0,
-        highest,
-        "(a quantum number)",
-        "Beyond it the centrifugal barrier leaves no level below the limit; ask for a smaller N.",
-    )
-
-
 Block = tuple[int, Array, Array]
 
 
@@ -168,7 +145,7 @@ def _diagonalise(problem: RadialProblem, grid: MappedGrid, wanted: range | list[
         group = np.array(wanted[first : first + batch])
         H = np.repeat(start[None], len(group), axis=0)
         H[:, diagonal, diagonal] += (group * (group + 1))[:, None] * centrifugal
-        energies, vectors = np.linalg.eigh(H)
+        energies, vectors = eigen(H)
         for N, E, c in zip(group, energies, vectors, strict=True):
             bound = E < 0
             if not bound.any():
@@ -203,8 +180,8 @@ def _collect(
     grid: MappedGrid | None = None,
 ) -> Levels:
     """Expectation values and turning points of all levels."""
-    N = np.concatenate([np.full(len(E), N) for N, E, _ in blocks] or [np.zeros(0)]).astype(np.int64)
-    v = np.concatenate([np.arange(len(E)) for _, E, _ in blocks] or [np.zeros(0)]).astype(np.int64)
+    N = np.array([N for N, E, _ in blocks for _ in E], dtype=np.int64)
+    v = np.array([v for _, E, _ in blocks for v in range(len(E))], dtype=np.int64)
     energy = np.concatenate([E for _, E, _ in blocks] or [np.zeros(0)])
     if grid is None or not blocks:
         none = np.zeros(0)
@@ -257,19 +234,20 @@ def turning_points(problem: RadialProblem, N: Array, energy: Array) -> tuple[Arr
         V = problem.effective(R, float(rotation))
         bottom, top = well_and_barrier(R, V)
         for j in here:
-            allowed = np.flatnonzero(V[: top + 1] < energy[j])
+            # Below the limit everything outside the barriers is forbidden; above it only the inside counts.
+            allowed = np.flatnonzero(V[: top + 1 if energy[j] > 0 else len(V)] < energy[j])
             first, last = (allowed[0], allowed[-1]) if allowed.size else (bottom, bottom)
             inner[j], outer[j] = max(first, 1), min(last, len(R) - 2)
-    i, k = inner.astype(int), outer.astype(int)
+    left, right = inner.astype(int), outer.astype(int)
 
     def excess(r: Array) -> Array:
         return problem.effective(r, N) - energy
 
-    return _bisect(excess, R[i - 1], R[i]), _bisect(excess, R[k + 1], R[k])
+    return _bisect(excess, R[left - 1], R[left]), _bisect(excess, R[right + 1], R[right])
 
 
 def well_and_barrier(R: Array, V: Array) -> tuple[int, int]:
-    """Index of the deepest point of V(R) inside its barrier, and of the barrier's top (the last point without one).
+    """Index of the deepest point of V(R) inside its outermost barrier, and of the highest point outside that.
 
     Parameters
     ----------
@@ -279,14 +257,15 @@ def well_and_barrier(R: Array, V: Array) -> tuple[int, int]:
     Returns
     -------
     tuple of int
-        Both the last index for a curve that only falls.
+        Both the last index for a curve that only falls; the second is the last index for a tail that rises for ever.
     """
     falls = V[:-1] > V[1:]
     if falls.all():
         return len(R) - 1, len(R) - 1
-    # The last rise, seen from the wall, ends on the top of the outermost barrier; an attractive tail rises for ever.
-    top = int(np.flatnonzero(~falls)[-1]) + 1
-    return int(np.argmin(V[: top + 1])), top
+    # The last rise, seen from the wall, ends on the top of the outermost barrier.
+    outermost = int(np.flatnonzero(~falls)[-1]) + 1
+    bottom = int(np.argmin(V[: outermost + 1]))
+    return bottom, bottom + int(np.argmax(V[bottom:]))
 
 
 def _bisect(excess: Potential, forbidden: Array, allowed: Array) -> Array:

@@ -1,7 +1,7 @@
 """The r^-6 law of levels near the limit: |E|^(1/3) falls linearly with v.
 
-``d(-E)^(1/3)/dv = -K_6/3``, K_n = hbar sqrt(2 pi/mu) n Gamma(1 + 1/n)/[Gamma(1/2 + 1/n) C_n^(1/n)], from WKB with a pure
--C_n/R^n tail. Source: R. J. LeRoy and R. B. Bernstein, J. Chem. Phys. 52, 3869 (1970), FROM MEMORY.
+``d(-E)^(1/3)/dv = -K_6/3``, K_n = hbar sqrt(2 pi/mu) n Gamma(1 + 1/n)/[Gamma(1/2 + 1/n) C_n^(1/n)], from WKB with a
+pure -C_n/R^n tail. Source: R. J. LeRoy and R. B. Bernstein, J. Chem. Phys. 52, 3869 (1970), FROM MEMORY.
 """
 
 from __future__ import annotations

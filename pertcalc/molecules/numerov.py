@@ -57,7 +57,7 @@ def zero_energy(problem: RadialProblem, rotations: Array, r_end: float, finer: f
     Returns
     -------
     nodes : ndarray of int, shape (n,)
-        Nodes inside r_end; by the oscillation theorem the number of bound levels, but for a node further out.
+        Nodes [1] inside r_end; by the oscillation theorem the number of bound levels, but for a node further out.
     length : float
         Scattering length [bohr] of the first rotation (only N = 0 has a meaning), from u ~ R - a at r_end and the
         first-order effect of the -C6/R^6 tail beyond.

@@ -13,6 +13,7 @@ from collections.abc import Mapping
 from dataclasses import dataclass, replace
 
 import numpy as np
+from numpy.typing import NDArray
 
 from pertcalc.molecules import siegert, tunnelling
 from pertcalc.molecules.levels import Ints, Levels, turning_points
@@ -28,12 +29,12 @@ BROAD = 0.05
 class QuasiLevels:
     """Quasi-bound levels, lowest N first and v rising; arrays of shape (n,).
 
-    ``v``, ``N``; ``energy`` [hartree, > 0] from the limit; ``barrier`` height [hartree] of that N; ``inner``, ``outer``
-    turning points of the well [bohr]; ``width`` full width at half maximum [hartree], the delay's where ``by_delay``,
-    else the flux's; ``width_flux``, ``width_wkb`` [hartree], nan for a level in an inner well behind a second barrier;
-    ``width_delay`` [hartree], nan where too narrow for it; ``model_error`` of the energies [hartree] by the curves'
-    stated uncertainties, in first order (nan: not known), None where none is stated; ``numerical_error`` [hartree]
-    the largest change of an energy by a step half as long.
+    ``v`` (counted in the well inside the barrier), ``N``; ``energy`` [hartree, > 0] from the limit; ``barrier``
+    height [hartree] of that N; ``inner``, ``outer`` turning points of the well [bohr]; ``width`` full width at half
+    maximum [hartree], the delay's where ``by_delay``, else the flux's; ``width_flux``, ``width_wkb`` [hartree], nan
+    for a level in an inner well behind a second barrier; ``width_delay`` [hartree], nan where too narrow for it;
+    ``model_error`` of the energies [hartree] by the curves' stated uncertainties, in first order (nan: not known),
+    None where none is stated; ``numerical_error`` [hartree] the largest change of an energy by a step half as long.
     """
 
     v: Ints
@@ -49,7 +50,7 @@ class QuasiLevels:
     numerical_error: float
 
     @property
-    def by_delay(self) -> Array:
+    def by_delay(self) -> NDArray[np.bool_]:
         """Where the delay gives the width: broad levels, for which flux over probability is only first order."""
         near = BROAD * np.minimum(self.energy, self.barrier - self.energy)
         return np.isfinite(self.width_delay) & (self.width_flux > near)
@@ -98,7 +99,8 @@ def quasibound_levels(
     # Two starts may lead to one level.
     kept = kept[np.unique(np.stack([sought.N[kept], sought.v[kept]]), axis=1, return_index=True)[1]]
     energy = np.where(sound, found.energy, sought.energy)[kept]
-    N, v, height, top, well, sound = (one[kept] for one in (sought.N, sought.v, height, top, well, sound))
+    N, v, sound = sought.N[kept], sought.v[kept], sound[kept]
+    height, top, well = height[kept], top[kept], well[kept]
     flux = np.where(sound, found.width[kept], np.nan)
     error = float(np.max(found.error[kept], initial=0.0, where=sound))
     inner, outer = turning_points(problem, N.astype(float), energy)
@@ -122,4 +124,3 @@ def _with_delays(problem: RadialProblem, made: QuasiLevels, top: Array, well: Ar
 def _none() -> QuasiLevels:
     empty, none = np.zeros(0), np.zeros(0, dtype=np.int64)
     return QuasiLevels(none, none, empty, empty, empty, empty, empty, empty, empty, None, 0.0)
-

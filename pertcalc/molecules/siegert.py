@@ -36,7 +36,7 @@ _LOWEST = 0.05
 
 @dataclass(frozen=True, slots=True)
 class Resonances:
-    """``energy``, ``width`` [hartree], ``nodes`` inside the barrier, ``converged``, each (n,); ``error`` [hartree] (n,).
+    """Arrays (n,): ``energy``, ``width`` [hartree], ``nodes`` inside the barrier, ``converged``, ``error`` [hartree].
 
     ``error`` is the change of the energy by a step half as long (fifteen sixteenths of the whole numerical error).
     """
@@ -64,15 +64,14 @@ class Match:
     nodes: Ints
 
 
-def solve(
-    problem: RadialProblem, N: Ints, guess: Array, r_top: Array, height: Array, r_well: Array
-) -> Resonances:
+def solve(problem: RadialProblem, N: Ints, guess: Array, r_top: Array, height: Array, r_well: Array) -> Resonances:
     """Newton's method on the energies of all quasi-bound levels together.
 
     Parameters
     ----------
     problem : RadialProblem
     N : ndarray of int, shape (n,)
+        Rotation [1].
     guess : ndarray, shape (n,)
         Energies to start from [hartree].
     r_top, height : ndarray, shape (n,)
@@ -153,9 +152,7 @@ def _fit(E: Array, delta: Array, energy: float, width: float) -> tuple[float, fl
     return float(energy + shift * width), float(ratio * width)
 
 
-def match(
-    problem: RadialProblem, N: Ints, energy: Array, r_top: Array, r_well: Array, finer: float = 1.0
-) -> Match:
+def match(problem: RadialProblem, N: Ints, energy: Array, r_top: Array, r_well: Array, finer: float = 1.0) -> Match:
     """Integrate the regular solution outwards and the outgoing wave inwards to a point near the barrier.
 
     Parameters
@@ -170,22 +167,21 @@ def match(
     -------
     Match
     """
-    parts = [
-        _match(problem, *(column[i : i + _COLUMNS] for column in (N, energy, r_top, r_well)), finer)
-        for i in range(0, len(N), _COLUMNS)
-    ]
+    parts = []
+    for i in range(0, len(N), _COLUMNS):
+        here = slice(i, i + _COLUMNS)
+        parts.append(_match(problem, N[here], energy[here], r_top[here], r_well[here], finer))
     return Match(*(np.concatenate([getattr(p, name) for p in parts]) for name in Match.__dataclass_fields__))
 
 
-def _match(
-    problem: RadialProblem, N: Ints, energy: Array, r_top: Array, r_well: Array, finer: float
-) -> Match:
+def _match(problem: RadialProblem, N: Ints, energy: Array, r_top: Array, r_well: Array, finer: float) -> Match:
     k = np.sqrt(2 * problem.reduced_mass * energy)
     start = np.maximum((START[0] * (N + 0.5) + START[1]) / k, 1.5 * r_top)
     grid = log_grid(problem, 1.02 * float(start.max()), finer)
     last = np.searchsorted(grid.R, start)
     meet, end = _turning_indices(problem, grid, N, energy, r_top, r_well, start)
-    centrifugal, k2 = (N + 0.5) ** 2, k * k
+    half = N.astype(np.float64) + 0.5
+    centrifugal, k2 = half * half, k * k
     ratio, inner_norm, nodes = _outwards(grid, centrifugal, k2, meet)
     back, outer_norm, log_amplitude, phase, outer_nodes, wave = _inwards(grid, centrifugal, k2, meet, end, last)
     U, T = _coefficients(grid, meet, centrifugal, k2)
@@ -195,7 +191,7 @@ def _match(
     norm = inner_norm + outer_norm + at_meet
     flux = wave * np.exp(2 * np.minimum(log_amplitude, 300.0))
     # The regular solution is real: its sign at m is that of (-1)^nodes.
-    phase = phase + _free_phase(k * grid.R[last], N + 0.5) + np.pi * nodes
+    phase = phase + _free_phase(k * grid.R[last], half) + np.pi * nodes
     return Match(mismatch, norm, flux, phase, nodes + outer_nodes)
 
 
@@ -250,7 +246,7 @@ def _inwards(
     """F_{m+1}/F_m of the outgoing wave, norm from m to the end of the barrier, ln|F_start/F_m|, phase, nodes, flux."""
     columns = len(k2)
     start_ratio, flux = _outgoing(grid, centrifugal, k2, last)
-    ratio = np.ones(columns, dtype=complex)  # F_n/F_{n+1}
+    ratio: Complex = np.ones(columns, dtype=np.complex128)  # F_n/F_{n+1}
     norm, log_amplitude, phase = np.zeros(columns), np.zeros(columns), np.zeros(columns)
     nodes = np.zeros(columns, dtype=np.int64)
     for n in range(int(last.max()), int(meet.min()), -1):

@@ -8,6 +8,7 @@ integral. Source: any text on semiclassical tunnelling (M. S. Child, Semiclassic
 from __future__ import annotations
 
 from dataclasses import dataclass
+from itertools import count
 
 import numpy as np
 from numpy.typing import NDArray
@@ -15,6 +16,7 @@ from numpy.typing import NDArray
 from pertcalc.molecules.grid import mapped_grid
 from pertcalc.molecules.levels import Ints, Levels, well_and_barrier
 from pertcalc.molecules.radial import R_FAR, Array, Potential, RadialProblem
+from pertcalc.molecules.spectrum import eigen
 
 _ACTION_ENERGIES = 41
 _ACTION_POINTS = 4000
@@ -43,7 +45,7 @@ class Barriers:
 
 
 def barriers(problem: RadialProblem) -> Barriers:
-    """Every N whose effective potential has a well behind a barrier, with the barrier's top.
+    """Every N whose effective potential has a well behind a barrier, with its highest point.
 
     Parameters
     ----------
@@ -56,15 +58,14 @@ def barriers(problem: RadialProblem) -> Barriers:
     """
     rows = []
     if problem.has_well:
-        N = 1
-        while True:
-            R = np.geomspace(problem.r_in, R_FAR * max(1.0, 20.0 / N), _ACTION_POINTS)
+        for N in count():
+            R = np.geomspace(problem.r_in, R_FAR * max(1.0, 20.0 / max(N, 1)), _ACTION_POINTS)
             V = problem.effective(R, float(N))
             bottom, top = well_and_barrier(R, V)
-            if not bottom < top < len(R) - 1:
+            if bottom < top < len(R) - 1:
+                rows.append((N, V[top], R[top], V[bottom], R[bottom]))
+            elif N:  # without rotation only a hump of the curve itself is a barrier
                 break
-            rows.append((N, V[top], R[top], V[bottom], R[bottom]))
-            N += 1
     columns = np.array(rows).T if rows else np.zeros((5, 0))
     return Barriers(columns[0].astype(np.int64), columns[1], columns[2], columns[3], columns[4])
 
@@ -75,8 +76,8 @@ class Candidates:
 
     ``N``, ``v``; ``energy`` [hartree] to start from: that of the spectrum with a hard wall at the barrier's top, and
     besides, where the level reaches the wall, one that fits the WKB phase; ``sure`` marks levels that do not reach the
-    wall: they exist whatever the search finds; ``model_error`` first-order change of the energy by the curves' uncertainties [hartree], nan where
-    unknown.
+    wall: they exist whatever the search finds; ``model_error`` first-order change of the energy by the curves'
+    uncertainties [hartree], nan where unknown.
     """
 
     N: Ints
@@ -105,24 +106,25 @@ def candidates(problem: RadialProblem, found: Barriers, levels: Levels, changes:
     grid = mapped_grid(problem, max(levels.points, 1))
     potential = problem.potential(grid.R)
     moved = np.array([change(grid.R) - potential for change in changes])
-    bound = np.bincount(levels.N, minlength=int(found.N.max(initial=0)) + 1)
     rows = []
     for N, height, r_top, depth in zip(found.N, found.height, found.r_top, found.depth, strict=True):
         inside = int(np.searchsorted(grid.R, r_top))
         H = grid.kinetic[:inside, :inside] + np.diag(problem.effective(grid.R[:inside], float(N)))
-        walled, vectors = np.linalg.eigh(H)
+        walled, vectors = eigen(H)
         errors = np.full(inside, np.nan)
         if changes:
             errors = np.sqrt(np.sum((moved[:, :inside] @ vectors**2) ** 2, axis=0))
-        count = int(np.count_nonzero(walled < height))
+        below = int(np.count_nonzero(walled < height))
         low = max(depth, 0.0)
         E = low + (height - low) * np.linspace(0, 1, _ACTION_ENERGIES)
         number = _wkb_number(problem, N, E, r_top)
         edge = _BELOW_TOP * (height - low)
-        for v in range(bound[N], max(count, int(np.floor(number[-1] + _ABOVE)) + 1)):
-            sure = v < count and vectors[-1, v] ** 2 < _AT_WALL
-            error = errors[min(v, count - 1)] if count else np.nan
-            if v < count:
+        # Levels of a further, outer well do not count: v is that of the well inside the barrier.
+        bound = int(np.count_nonzero((levels.N == N) & (levels.outer < r_top)))
+        for v in range(bound, max(below, int(np.floor(number[-1] + _ABOVE)) + 1)):
+            sure = v < below and vectors[-1, v] ** 2 < _AT_WALL
+            error = errors[min(v, below - 1)] if below else np.nan
+            if v < below and walled[v] > 0:
                 rows.append((N, v, walled[v], sure, error))
             if not sure:
                 phase = np.clip(np.interp(v, number, E), low + edge, height - edge)

@@ -99,13 +99,24 @@ def save_figure(curves: CurveSet, path: str | PathLike[str]) -> Path:
     InputError
         Another suffix, or the place cannot be written.
     """
-    import matplotlib
+    kind = figure_format(path)
+    return write_figure(draw_curves(curves), path, kind)
 
+
+def figure_format(path: str | PathLike[str]) -> str:
+    """The format of a figure file by its suffix, one of FORMATS; InputError for another one."""
     place = Path(path)
     kind = place.suffix.lower().lstrip(".")
     if kind not in FORMATS:
         raise InputError(f"figure file = {place.name!r}: must end in .png or .svg; choose one of these")
-    figure = draw_curves(curves)
+    return kind
+
+
+def write_figure(figure: Figure, path: str | PathLike[str], kind: str) -> Path:
+    """Write a figure in a format of FORMATS; the same figure gives the same bytes. InputError where that fails."""
+    import matplotlib
+
+    place = Path(path)
     metadata = {"Date": None} if kind == "svg" else {"Software": None}
     try:
         with matplotlib.rc_context({"svg.hashsalt": "pertcalc", **RC}):
