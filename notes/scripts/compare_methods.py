@@ -171,7 +171,7 @@ numbers fitted to 25 pairs x 3 temperatures x 5 rates: it interpolates, and says
 - **Shifts of the helium pairs** (and D2 of Rb, Cs with He) are small differences of a red tail and a blue wall; the
   ratio means nothing where the shift passes zero. The absolute deviation is below 1 % of the width.
 - **Tiny transfer** (Rb, Cs; below 1 bohr^2) hangs on the tail of the Maxwell distribution and on the meeting of curves
-  high on the wall, where a common path is worst: up to a factor 2 for Cs.
+  high on the wall, where a common path is worst: up to a factor 3 for Cs.
 - **Gain of orientation** is a small difference of larger terms, 5-15 % off where it is large.
 - **Li**: 2-4 % remain in everything; no single path serves a level that is a mixture of both curves.
 
