@@ -69,7 +69,7 @@ class Molecule:
     ``isotopes`` named by the user; ``rotation`` N the user asked for, None for all; ``count_error`` change
     of the counts of N = 0 and of all N by the curves' stated errors [1]; ``law`` None where it does not
     apply; ``equilibrium`` None where it means nothing, with the reason in ``no_equilibrium``; ``density_cm3`` of the
-    gas [cm^-3] at the fill; ``times`` None without a well; ``life`` of the free level [s], None for the ground level.
+    gas [cm^-3] at the fill; ``times`` None without levels; ``life`` of the free level [s], None for the ground level.
     """
 
     alkali: str
@@ -274,8 +274,8 @@ def _times(
     masses: tuple[float | None, float | None],
     density: float,
 ) -> Times | None:
-    if not problem.has_well:
-        return None
+    if balance.total == 0:
+        return None  # nothing to break
     gas_u = masses[1] or curves.mass_perturber_u or species.noble_gas(curves.noble_gas).mass_u.value
     alkali_u = masses[0] or curves.mass_alkali_u or species.alkali(curves.alkali).mass_u.value
     pair = (alkali_u + gas_u) * AMU_AU

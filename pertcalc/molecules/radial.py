@@ -39,8 +39,10 @@ _SURVEY = 6000
 DEPTH = 36.0
 # A wall that stops a wave function less than exp(-THIN_WALL) is no wall.
 THIN_WALL = 8.0
-# A table whose last value is explained to less than this by its dispersion terms ends inside the well.
+# A table ends inside the classically allowed region when its dispersion terms explain less than this part of its last
+# value (or more than the inverse), or when it stops deeper than DEEP_END of its well and the well holds a level at all.
 DISPERSION_SHARE = 0.5
+DEEP_END = 0.3
 
 
 @dataclass(frozen=True, slots=True)
@@ -165,8 +167,8 @@ def state_problem(curves: CurveSet, state: str, reduced_mass: float | None = Non
         The wall does not hold a wave function.
     """
     check_state(state)
-    _check_tables(curves, state)
     mu = reduced_mass_of(curves) if reduced_mass is None else reduced_mass
+    _check_tables(curves, state, mu)
     parts = {name: curves.states[name].curve for name in PARTS[state]}
     a = fine_structure.coupling(fine_structure.splitting_of(curves))
     return radial_problem(_potential(parts, state, a), mu, _dispersion(parts, state, a))
@@ -240,8 +242,8 @@ def _mixed(C6: dict[str, float], state: str, a: float) -> float:
     return weight * C6["B"] + (1 - weight) * C6["A"]
 
 
-def _check_tables(curves: CurveSet, state: str) -> None:
-    """DataFileError when a table ends where the dispersion terms cannot continue it."""
+def _check_tables(curves: CurveSet, state: str, mu: float) -> None:
+    """DataFileError when a table ends inside the classically allowed region of levels it would have to show."""
     problems = []
     for name in PARTS[state]:
         curve = curves.states[name].curve
@@ -250,14 +252,25 @@ def _check_tables(curves: CurveSet, state: str) -> None:
         R, V = float(curve.R[-1]), float(curve.V[-1])
         dispersion = float(replace(curve.tail, C12=0.0, C14=0.0).with_derivative(R)[0])
         well = curve.well()
-        if V < 0 and well is not None and not DISPERSION_SHARE * V >= dispersion >= V / DISPERSION_SHARE:
+        if V >= 0 or well is None:
+            continue
+        continued = DISPERSION_SHARE * V >= dispersion >= V / DISPERSION_SHARE
+        if not continued or (-V > DEEP_END * well.depth and _levels_held(curve, mu) > 1):
             problems.append(
                 f"states.{name}.points end at R = {R:.4g} bohr inside the classically allowed region: V = "
-                f"{V * HARTREE_CM1:.4g} cm^-1 there, of which C6, C8 and C10 explain {dispersion * HARTREE_CM1:.4g}; "
-                "add points further out, until the C_n tail continues the table"
+                f"{V * HARTREE_CM1:.4g} cm^-1 there ({-100 * V / well.depth:.0f} % of the well), of which C6, C8 and "
+                f"C10 explain {dispersion * HARTREE_CM1:.4g}; add points further out, until the C_n tail continues "
+                "the table"
             )
     if problems:
         raise DataFileError(curves.path or curves.id, problems)
+
+
+def _levels_held(curve: Curve, mu: float) -> float:
+    """WKB number of levels of N = 0, before rounding [1]."""
+    R = np.geomspace(R_LOOK, R_FAR, _SURVEY)
+    wave_number = np.sqrt(2 * mu * np.clip(-curve(R), 0, None))
+    return float(np.trapezoid(wave_number, R)) / np.pi + 0.375
 
 
 def reduced_mass_of(

@@ -32,8 +32,11 @@ def molecule_text(found: Molecule) -> str:
     if not found.problem.has_well:
         return "\n".join([*lines, "", "The curve is purely repulsive: it has no bound and no quasi-bound level."])
     lines += ["", *_counts(found)]
-    lines += ["", *_levels(found)]
-    lines += ["", *_quasi(found)]
+    if len(found.levels.v) + len(found.quasi.v):
+        lines += ["", *_levels(found)]
+        lines += ["", *_quasi(found)]
+    else:
+        lines += wrapped("No level, bound or quasi-bound: the curve is repulsive, its well too shallow to hold one.")
     lines += ["", *_limit(found)]
     lines += ["", *_isotopes(found)]
     lines += ["", *_equilibrium(found)]
@@ -205,9 +208,13 @@ def _equilibrium(found: Molecule) -> list[str]:
     body = [[name, number(q * unit), number(c * unit), number(n * q * unit * 1e-24, 3)] for name, q, c in pairs]
     lines += table(["", "from levels", "classical", "n K at the fill"], body)
     lines += wrapped(
-        f"errors: numerical {percent(balance.numerical_error)}, curves {percent(balance.model_error)}. Of the "
-        f"metastable, {number(found.long_lived * unit)} cubic angstrom tunnel out more slowly than collisions break "
-        "them at this fill."
+        f"errors: numerical {percent(balance.numerical_error)}, curves {percent(balance.model_error)}."
+        + (
+            f" Of the metastable, {number(found.long_lived * unit)} cubic angstrom tunnel out more slowly than "
+            "collisions break them at this fill."
+            if balance.metastable
+            else ""
+        )
     )
     if balance.weight != 1:
         lines += wrapped(f"K counts atoms in {LIMITS[found.state]}; this curve has {balance.weight:g} of its states.")
