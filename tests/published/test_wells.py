@@ -27,7 +27,7 @@ def test_wells_of_sodium(
     entry = load_default("Na", gas).states[state]
     well = entry.curve.well()
     assert well is not None
-    # The curves go through these wells: a tenth of the printed error is the transcription and table rounding.
+    # The curves go through these wells: a tenth of the printed error is copying and table rounding.
     assert well.depth * HARTREE_CM1 == pytest.approx(De, abs=0.1 * De_error), source
     assert well.position * BOHR_ANGSTROM == pytest.approx(Re, abs=0.1 * Re_error), source
     assert entry.mark == "READ"
