@@ -245,3 +245,19 @@ def test_spectrum_and_nodes_agree_for_every_default_curve(alkali):
             counts = count_levels(problem, bound_levels(problem))
             assert np.array_equal(counts.spectral, counts.nodes), f"{alkali}-{gas} {state}"
             assert counts.agree or counts.remarks
+
+
+def test_an_inner_well_shallower_than_the_outer_one_is_not_cut_off():
+    # Issue 4: the wall was once sought inside the deepest well, so the hump before it was taken for the wall.
+    def two_wells(R):
+        wall = np.exp(-4 * (R - 5.5))
+        wells = 60 * np.exp(-((R - 7) ** 2)) + 90 * np.exp(-((R - 13) ** 2) / 4)
+        return wall - (wells - 50 * np.exp(-((R - 10) ** 2))) / HARTREE_CM1
+
+    problem = radial_problem(two_wells, 40_000.0, 0.0)
+    assert problem.r_in < 6.5 and problem.position == pytest.approx(13.0, abs=0.1)
+    levels = bound_levels(problem)
+    counts = count_levels(problem, levels)
+    assert np.array_equal(counts.spectral, counts.nodes)
+    inner = levels.extent < 9.0
+    assert inner.any() and not inner.all()

@@ -35,6 +35,8 @@ WEIGHTS = {"X": 1.0, "A1/2": 1.0, "A3/2": 0.5, "B": 0.5}
 R_LOOK = 0.5
 R_FAR = 400.0
 _SURVEY = 6000
+# A wall is looked at up to here [hartree].
+_TOP = 1.0
 # A wave function has decayed by exp(-DEPTH) where a grid may end.
 DEPTH = 36.0
 # A wall that stops a wave function less than exp(-THIN_WALL) is no wall.
@@ -106,39 +108,27 @@ def radial_problem(potential: Potential, reduced_mass: float, C6: float) -> Radi
     """
     R = np.geomspace(R_LOOK, R_FAR, _SURVEY)
     V = potential(R)
-    # Attraction must be more than what rounding leaves of a curve that is zero far out.
-    k = _deepest(R, V)
-    if k is None:
+    # The wall counts from the outermost point at which it is at its highest: nothing further in is real.
+    top = int(np.flatnonzero(V >= min(float(V.max()), _TOP))[-1])
+    k = top + int(np.argmin(V[top:]))
+    if V[k] >= 0:
         return RadialProblem(potential, reduced_mass, C6, 0.0, 0.0, R_LOOK)
     fine = np.linspace(R[max(k - 1, 0)], R[min(k + 1, _SURVEY - 1)], 2001)
     values = potential(fine)
     best = int(np.argmin(values))
-    zero = k - int(np.argmax(V[k::-1] > 0))
-    start = zero
-    while start > 0 and V[start - 1] > V[start]:
-        start -= 1
-    wall = slice(start, zero + 1)
+    # The innermost well of several bounds the grid, not the deepest.
+    zero = max(top + int(np.argmax(V[top:] < 0)) - 1, top)
+    wall = slice(top, zero + 1)
     kappa = np.sqrt(2 * reduced_mass * np.clip(V[wall], 0, None))
     stopped = np.cumsum((0.5 * (kappa[1:] + kappa[:-1]) * np.diff(R[wall]))[::-1])
     if stopped.size == 0 or stopped[-1] < THIN_WALL:
         raise InputError(
-            f"the wall of the potential rises only to {V[start] * HARTREE_CM1:.4g} cm^-1 at {R[start]:.3g} bohr: it "
+            f"the wall of the potential rises only to {V[top] * HARTREE_CM1:.4g} cm^-1 at {R[top]:.3g} bohr: it "
             "does not hold a wave function; extend the curve inwards"
         )
     inner = int(np.searchsorted(stopped, DEPTH))
-    r_in = float(R[max(zero - inner - 1, start)])
+    r_in = float(R[max(zero - inner - 1, top)])
     return RadialProblem(potential, reduced_mass, C6, -float(values[best]), float(fine[best]), r_in)
-
-
-def _deepest(R: Array, V: Array) -> int | None:
-    """Index of the deepest point that has a wall inside it; None for a curve that is nowhere attractive."""
-    positive = np.flatnonzero(V > 0)
-    if not positive.size:
-        return int(np.argmin(V))
-    # The wall counts from the outermost point at which it is at its highest: nothing further in is real.
-    top = int(np.flatnonzero(V >= min(float(V.max()), 1.0))[-1]) if V.max() > 0 else 0
-    k = top + int(np.argmin(V[top:]))
-    return k if V[k] < 0 and k > top else None
 
 
 def state_problem(curves: CurveSet, state: str, reduced_mass: float | None = None) -> RadialProblem:
