@@ -250,7 +250,7 @@ def test_spectrum_and_nodes_agree_for_every_default_curve(alkali):
 def test_an_inner_well_shallower_than_the_outer_one_is_not_cut_off():
     # Issue 4: the wall was once sought inside the deepest well, so the hump before it was taken for the wall.
     def two_wells(R):
-        wall = np.exp(-4 * (R - 5.5))
+        wall = np.exp(-8 * (R - 5.5))
         wells = 60 * np.exp(-((R - 7) ** 2)) + 90 * np.exp(-((R - 13) ** 2) / 4)
         return wall - (wells - 50 * np.exp(-((R - 10) ** 2))) / HARTREE_CM1
 
