@@ -256,9 +256,6 @@ def finer_rates(name: str, T: float, monkeypatch) -> dict:
 
 
 SLOW = pytest.mark.slow
-UNDULATING = pytest.mark.xfail(
-    strict=True, reason="Li-He undulates faster in energy than the grid samples; not noticed"
-)
 
 
 @pytest.mark.parametrize(
@@ -268,7 +265,7 @@ UNDULATING = pytest.mark.xfail(
         pytest.param("Rb", "He", 350.0, marks=SLOW),
         pytest.param("K", "Ar", 373.0, marks=SLOW),
         pytest.param("Cs", "Ne", 313.0, marks=SLOW),
-        pytest.param("Li", "He", 350.0, marks=(SLOW, UNDULATING)),
+        pytest.param("Li", "He", 350.0, marks=SLOW),
     ],
 )
 def test_numerical_error_covers_what_a_finer_computation_changes(alkali, gas, T, monkeypatch):
