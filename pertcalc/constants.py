@@ -14,14 +14,12 @@ _value = _codata.physical_constants
 BOHR_ANGSTROM = _value["Bohr radius"][0] * 1e10
 BOHR_CM = _value["Bohr radius"][0] * 1e2
 HARTREE_CM1 = _value["hartree-inverse meter relationship"][0] / 100
-HARTREE_HZ = _value["hartree-hertz relationship"][0]
 HARTREE_EV = _value["Hartree energy in eV"][0]
 AMU_AU = _value["atomic mass constant"][0] / _value["electron mass"][0]
 KELVIN_HARTREE = _value["kelvin-hartree relationship"][0]
 AU_TIME_S = _value["atomic unit of time"][0]
 AU_VELOCITY_CM_S = _value["atomic unit of velocity"][0] * 1e2
 BOHR2_ANGSTROM2 = BOHR_ANGSTROM**2
-BOHR2_CM2 = BOHR_CM**2
 # A rate coefficient in bohr^3 per atomic unit of time, as cm^3/s.
 AU_RATE_CM3_S = BOHR_CM**3 / AU_TIME_S
 AMAGAT_CM3 = _value["Loschmidt constant (273.15 K, 101.325 kPa)"][0] * 1e-6

@@ -72,9 +72,14 @@ def effort(energy: Array, temperatures: Array, power: float, least: float) -> Ar
     return np.maximum(share**power, least)
 
 
+def thermal_speed(kT: Array | float, reduced_mass: Array | float) -> Array:
+    """vbar = sqrt(8 kT/(pi mu)) [au] of thermal energies [hartree] and a reduced mass [electron masses]."""
+    return np.sqrt(8 * np.asarray(kT) / (np.pi * reduced_mass))
+
+
 def mean_speed(temperature: Array | float, reduced_mass: float) -> Array:
-    """vbar = sqrt(8 kT/(pi mu)) [au] of temperatures [K] and a reduced mass [electron masses]."""
-    return np.sqrt(8 * KELVIN_HARTREE * np.asarray(temperature) / (np.pi * reduced_mass))
+    """vbar [au] of temperatures [K] and a reduced mass [electron masses]; see `thermal_speed`."""
+    return thermal_speed(KELVIN_HARTREE * np.asarray(temperature), reduced_mass)
 
 
 @dataclass(frozen=True, slots=True)

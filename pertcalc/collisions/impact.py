@@ -54,8 +54,8 @@ def _scan_points(family: PathFamily, energy: float, last: float) -> Array:
     return b_all[(b_all >= 0) & (b_all <= last)]
 
 
-def adiabatic_phases(family: PathFamily, energy: float, b: Array) -> tuple[Array, Array]:
-    """Phases of the three adiabatic curves minus the ground curve along the paths, and the turning points.
+def adiabatic_phases(family: PathFamily, energy: float, b: Array) -> Array:
+    """Phases of the three adiabatic curves minus the ground curve along the paths.
 
     Parameters
     ----------
@@ -69,8 +69,6 @@ def adiabatic_phases(family: PathFamily, energy: float, b: Array) -> tuple[Array
     -------
     phases : ndarray, shape (3, n)
         Int (V_k - V_X) dt over half a path [radian], k = lower and upper Omega = 1/2 curve, V_Pi; a few per cent.
-    turning_point : ndarray, shape (n,)
-        [bohr].
     """
     turning_point = family.turning_points(energy, b)
     nodes, weights = np.polynomial.legendre.leggauss(_SCAN_NODES)
@@ -82,7 +80,7 @@ def adiabatic_phases(family: PathFamily, energy: float, b: Array) -> tuple[Array
     driving = family.pair.path_potential(family.path, pi, anisotropy)
     time = family.rate_of_time(np.full(b.shape, energy), b, R, y, driving) * 0.5 * last * weights[:, None]
     curves = [family.pair.path_potential(k, pi, anisotropy) - pi for k in ("lower", "upper")] + [0.0]
-    return np.stack([np.sum((line + curve) * time, axis=0) for curve in curves]), turning_point
+    return np.stack([np.sum((line + curve) * time, axis=0) for curve in curves])
 
 
 def impact_grid(family: PathFamily, energy: float, radius: float, density: float = 1.0) -> ImpactGrid:
@@ -104,7 +102,7 @@ def impact_grid(family: PathFamily, energy: float, radius: float, density: float
     """
     last = REACH * radius
     scan = _scan_points(family, energy, last)
-    phases, _ = adiabatic_phases(family, energy, scan)
+    phases = adiabatic_phases(family, energy, scan)
     width = np.diff(scan)
     # Over the whole path: twice the half-path phase.
     turns = 2 * np.abs(np.diff(phases, axis=1)).max(axis=0) / (2 * np.pi)

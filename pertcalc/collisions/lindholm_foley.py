@@ -13,6 +13,7 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from pertcalc.errors import InputError
+from pertcalc.thermal import thermal_speed
 
 Array: TypeAlias = NDArray[np.float64]
 
@@ -121,7 +122,7 @@ def mean_speed(kT: ArrayLike, reduced_mass: float) -> Array:
         Not positive.
     """
     energy = require_positive("kT", kT, "hartree")
-    return np.sqrt(8 * energy / (math.pi * require_positive("reduced_mass", reduced_mass, "electron masses")))
+    return thermal_speed(energy, require_positive("reduced_mass", reduced_mass, "electron masses"))
 
 
 def speed_moment(s: float) -> float:
