@@ -19,8 +19,8 @@ J_OF = {"S1/2": 0.5, "P1/2": 0.5, "P3/2": 1.5}
 class LevelRates:
     """Decay and electronic relaxation of P1/2 and P3/2 at one gas density [s^-1].
 
-    ``decay`` level -> radiative rate; ``loss`` level -> rank K (0 to 2J) -> total collisional loss, outflow included, so
-    that ``loss[level][0]`` is the outflow; ``gain`` level of origin -> rank K (0 and 1) -> gain of the orthonormal
+    ``decay`` level -> radiative rate; ``loss`` level -> rank K (0 to 2J) -> total collisional loss, outflow included,
+    ``loss[level][0]`` being the outflow; ``gain`` level of origin -> rank K (0 and 1) -> gain of the orthonormal
     multipole K in the other level, signed for K = 1. Nuclear spin plays no part in any of them.
     """
 
@@ -30,7 +30,7 @@ class LevelRates:
 
 
 def population_gain(level: str, outflow: float) -> float:
-    """Gain of the orthonormal rank 0 in the other level, ``outflow sqrt((2J+1)/(2J'+1))`` [s^-1]; trace is conserved."""
+    """Gain of orthonormal rank 0 in the other level, ``outflow sqrt((2J+1)/(2J'+1))`` [s^-1]: the trace is conserved."""
     return outflow * math.sqrt((2 * J_OF[level] + 1) / (2 * J_OF[OTHER_LEVEL[level]] + 1))
 
 
