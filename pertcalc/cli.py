@@ -12,13 +12,17 @@ import click
 from pertcalc import __version__
 from pertcalc.cli_molecule import molecule
 from pertcalc.cli_options import (
+    INTERRUPTED,
     QUANTITIES,
     AnyGas,
     Quantity,
+    Shown,
     Species,
     Words,
+    check_targets,
     checked_gas,
     deliver,
+    end,
     method_option,
     one_format,
     progress_bar,
@@ -26,8 +30,6 @@ from pertcalc.cli_options import (
     result_options,
 )
 from pertcalc.errors import InputError, PertcalcError
-
-INTERRUPTED = 130
 
 
 class Friendly(click.Group):
@@ -47,14 +49,6 @@ class Friendly(click.Group):
             _drop_stdout()
             where = f" {error.filename!r}" if error.filename else ""
             raise Shown(f"cannot read or write{where}: {error.strerror or error}.", 1) from error
-
-
-class Shown(click.ClickException):
-    """One message on stderr with an exit code of its own."""
-
-    def __init__(self, message: str, exit_code: int):
-        super().__init__(message)
-        self.exit_code = exit_code  # type: ignore[misc]
 
 
 def _drop_stdout() -> None:
@@ -117,8 +111,7 @@ def report(
         pertcalc report Rb --gas He --gas Ar --temperature "60 degC" --pressure "20 Torr" --field "0.5 G"
     """
     one_format(as_json, as_csv)
-    if output is not None:
-        _check_output(output, force)
+    check_targets(force, output)
     from pertcalc.report.compute import compute_report, default_jobs
     from pertcalc.report.request import make_request
 
@@ -135,10 +128,7 @@ def report(
     with progress_bar(f"{request.alkali} in {', '.join(request.gases)}") as progress:
         made = compute_report(request, jobs or default_jobs(), progress)
     deliver(_rendered(made, as_json, as_csv), output, force)
-    if made.interrupted:
-        raise Shown(f"stopped by the user; not finished: {', '.join(made.missing)}.", INTERRUPTED)
-    if made.error is not None:
-        raise made.error
+    end(made)
 
 
 def _rendered(made: Any, as_json: bool, as_csv: bool) -> str:
@@ -191,8 +181,7 @@ def rates(
         pertcalc rates K Ar --temperature 368 --temperature "150 degC" --json
     """
     one_format(as_json, as_csv)
-    if output is not None:
-        _check_output(output, force)
+    check_targets(force, output)
     gas = checked_gas(gas, curve_file)
     from pertcalc.rates import collision_rates
 
@@ -211,13 +200,6 @@ def rates(
 
         text = rates_text(found)
     deliver(text, output, force)
-
-
-def _check_output(output: str, force: bool) -> None:
-    """Refuse an output file before the computation, not after it."""
-    from pertcalc.report.output import check_target
-
-    check_target(output, force)
 
 
 @cli.command(short_help="The pair curves: list, details, plot, check of a file.")
@@ -250,9 +232,7 @@ def curves(
         pertcalc curves --check my-curves.toml
     """
     one_format(as_json, as_csv)
-    for target in (output, plot):
-        if target is not None:
-            _check_output(target, force)
+    check_targets(force, output, plot)
     from pertcalc.report import curves_text
 
     if check_file is not None:
@@ -301,20 +281,14 @@ def validate(
         pertcalc validate --all --quantity fwhm --quantity shift -o widths.txt
     """
     one_format(as_json, as_csv)
-    if output is not None:
-        _check_output(output, force)
+    check_targets(force, output)
     from pertcalc.report.compute import default_jobs
     from pertcalc.report.validation_run import validate as run
 
     with progress_bar("measured pairs") as progress:
         found = run(everything, quantities, method, jobs or default_jobs(), progress)
     deliver(_validation(found, as_json, as_csv), output, force)
-    if found.interrupted:
-        raise Shown(f"stopped by the user; not finished: {', '.join(found.missing)}.", INTERRUPTED)
-    if (failed := found.failure()) is not None:
-        raise failed
-    if found.error is not None:
-        raise found.error
+    end(found, found.failure())
 
 
 def _validation(found: Any, as_json: bool, as_csv: bool) -> str:

@@ -7,7 +7,7 @@ from typing import Any
 import click
 from click.shell_completion import CompletionItem
 
-from pertcalc.cli_options import AnyGas, Species, Words, checked_gas, deliver, one_format, result_options
+from pertcalc.cli_options import AnyGas, Species, Words, check_targets, checked_gas, deliver, one_format, result_options
 from pertcalc.errors import UnknownNameError
 
 # Those of pertcalc.molecules.radial, which is too heavy for the way to --help (a test compares them).
@@ -89,11 +89,7 @@ def molecule(
         pertcalc molecule Li He --isotope 6Li --isotope 3He
     """
     one_format(as_json, as_csv)
-    from pertcalc.report.output import check_target
-
-    for target in (output, plot):
-        if target is not None:
-            check_target(target, force)
+    check_targets(force, output, plot)
     gas = checked_gas(gas, curve_file)
     if plot is not None:
         from pertcalc.report.curve_figures import figure_format

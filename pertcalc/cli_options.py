@@ -3,19 +3,28 @@
 from __future__ import annotations
 
 import sys
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Mapping
 from contextlib import contextmanager
-from typing import Any, TypeVar
+from typing import Any, Protocol, TypeVar
 
 import click
 from click.shell_completion import CompletionItem
 
-from pertcalc.errors import InputError, UnknownNameError
+from pertcalc.errors import InputError, PertcalcError, UnknownNameError
 from pertcalc.names import METHODS
 
 Command = TypeVar("Command", bound=Callable[..., Any])
 # Those of pertcalc.measured, which is too heavy for the way to --help (a test compares them).
 QUANTITIES = ("fwhm", "shift", "transfer", "multipole_loss")
+INTERRUPTED = 130
+
+
+class Shown(click.ClickException):
+    """One message on stderr with an exit code of its own."""
+
+    def __init__(self, message: str, exit_code: int):
+        super().__init__(message)
+        self.exit_code = exit_code  # type: ignore[misc]
 
 
 class Species(click.ParamType):
@@ -140,6 +149,36 @@ def checked_gas(gas: str, curve_file: str | None) -> str:
         if curve_file is None:
             raise
         return gas
+
+
+def check_targets(force: bool, *paths: str | None) -> None:
+    """Refuse an output file before the computation, not after it; None is no file."""
+    from pertcalc.report.output import check_target
+
+    for path in paths:
+        if path is not None:
+            check_target(path, force)
+
+
+class Partial(Protocol):
+    """A result that may lack parts: because the user stopped it, or because one of them failed."""
+
+    @property
+    def interrupted(self) -> bool: ...
+    @property
+    def missing(self) -> Mapping[str, str]: ...
+    @property
+    def error(self) -> PertcalcError | None: ...
+
+
+def end(found: Partial, failure: PertcalcError | None = None) -> None:
+    """Leave with the exit code a delivered result deserves: stopped, a failed check, a part that failed, or none."""
+    if found.interrupted:
+        raise Shown(f"stopped by the user; not finished: {', '.join(found.missing)}.", INTERRUPTED)
+    if failure is not None:
+        raise failure
+    if found.error is not None:
+        raise found.error
 
 
 def deliver(text: str, output: str | None, force: bool) -> None:

@@ -30,7 +30,7 @@ class LevelRates:
 
 
 def population_gain(level: str, outflow: float) -> float:
-    """Gain of orthonormal rank 0 in the other level, ``outflow sqrt((2J+1)/(2J'+1))`` [s^-1]: the trace is conserved."""
+    """Gain of orthonormal rank 0 in the other level, ``outflow sqrt((2J+1)/(2J'+1))`` [s^-1]; conserves the trace."""
     return outflow * math.sqrt((2 * J_OF[level] + 1) / (2 * J_OF[OTHER_LEVEL[level]] + 1))
 
 
