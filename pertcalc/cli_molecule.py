@@ -9,6 +9,7 @@ from click.shell_completion import CompletionItem
 
 from pertcalc.cli_options import AnyGas, Species, Words, check_targets, checked_gas, deliver, one_format, result_options
 from pertcalc.errors import UnknownNameError
+from pertcalc.names import DEFAULT_FILL_TEMPERATURE_K, DEFAULT_PRESSURE_TORR
 
 # Those of pertcalc.molecules.radial, which is too heavy for the way to --help (a test compares them).
 STATES = ("X", "A1/2", "A3/2", "B")
@@ -44,12 +45,16 @@ class State(click.ParamType):
     "--temperature", type=Words("temperature", "K"), default=300.0, show_default="300 K", help="Of the equilibrium."
 )
 @click.option(
-    "--pressure", type=Words("pressure"), default=20.0, show_default="20 Torr", help="Of the gas, at the fill."
+    "--pressure",
+    type=Words("pressure"),
+    default=DEFAULT_PRESSURE_TORR,
+    show_default="20 Torr",
+    help="Of the gas, at the fill.",
 )
 @click.option(
     "--fill-temperature",
     type=Words("temperature", "K"),
-    default=293.15,
+    default=DEFAULT_FILL_TEMPERATURE_K,
     show_default="20 degC",
     help="At which the pressure was read.",
 )

@@ -38,11 +38,10 @@ from pertcalc.molecules.radial import (
     state_problem,
 )
 from pertcalc.rates import load_curves, temperatures_of
+from pertcalc.names import DEFAULT_FILL_TEMPERATURE_K, DEFAULT_PRESSURE_TORR
 from pertcalc.units import density_cm3
 
 DEFAULT_TEMPERATURE_K = 300.0
-DEFAULT_PRESSURE_TORR = 20.0
-DEFAULT_FILL_TEMPERATURE_K = 293.15
 # An excited pair is near equilibrium when it meets this many gas atoms within the life of the free level.
 COLLISIONS_FOR_EQUILIBRIUM = 10.0
 

@@ -9,11 +9,10 @@ from os import PathLike
 from pertcalc.curves.curveset import CurveSet
 from pertcalc.curves.files import for_pair, load
 from pertcalc.errors import InputError
+from pertcalc.names import DEFAULT_FILL_TEMPERATURE_K, DEFAULT_PRESSURE_TORR
 from pertcalc.species import GASES, alkali_symbol, noble_gas_symbol
 from pertcalc.vapour.fill import (
     DEFAULT_FIELD_G,
-    DEFAULT_FILL_TEMPERATURE_K,
-    DEFAULT_PRESSURE_TORR,
     DEFAULT_TEMPERATURE_K,
     Fill,
 )

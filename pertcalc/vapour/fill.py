@@ -16,8 +16,6 @@ from pertcalc.errors import InputError
 from pertcalc.units import density_cm3
 
 GAUSS_T = 1e-4
-DEFAULT_PRESSURE_TORR = 20.0
-DEFAULT_FILL_TEMPERATURE_K = 293.15
 DEFAULT_FIELD_G = 0.5
 # Cell temperature where a vapour is dense enough to be used and thin enough to be pumped through [K].
 DEFAULT_TEMPERATURE_K = {"Li": 623.15, "Na": 393.15, "K": 353.15, "Rb": 333.15, "Cs": 313.15}
