@@ -37,8 +37,8 @@ from pertcalc.molecules.radial import (
     reduced_mass_of,
     state_problem,
 )
-from pertcalc.rates import load_curves, temperatures_of
 from pertcalc.names import DEFAULT_FILL_TEMPERATURE_K, DEFAULT_PRESSURE_TORR
+from pertcalc.rates import load_curves, temperatures_of
 from pertcalc.units import density_cm3
 
 DEFAULT_TEMPERATURE_K = 300.0
