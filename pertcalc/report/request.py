@@ -9,13 +9,8 @@ from os import PathLike
 from pertcalc.curves.curveset import CurveSet
 from pertcalc.curves.files import for_pair, load
 from pertcalc.errors import InputError
-from pertcalc.names import DEFAULT_FILL_TEMPERATURE_K, DEFAULT_PRESSURE_TORR
 from pertcalc.species import GASES, alkali_symbol, noble_gas_symbol
-from pertcalc.vapour.fill import (
-    DEFAULT_FIELD_G,
-    DEFAULT_TEMPERATURE_K,
-    Fill,
-)
+from pertcalc.vapour.fill import Fill, fill_or_defaults
 
 DEFAULT_METHOD = "semiclassical"
 
@@ -74,19 +69,11 @@ def make_request(
         The curve file cannot be used.
     """
     symbol = alkali_symbol(alkali)
-    conditions = {
-        "temperature": (temperature_K, DEFAULT_TEMPERATURE_K[symbol]),
-        "pressure": (pressure_torr, DEFAULT_PRESSURE_TORR),
-        "fill temperature": (fill_temperature_K, DEFAULT_FILL_TEMPERATURE_K),
-        "field": (field_G, DEFAULT_FIELD_G),
-    }
-    T, p, T_fill, B = (default if given is None else given for given, default in conditions.values())
-    fill = Fill(pressure_torr=p, fill_temperature_K=T_fill, temperature_K=T, field_G=B)
+    fill, defaults = fill_or_defaults(symbol, temperature_K, pressure_torr, fill_temperature_K, field_G)
     curve_set = None if curves is None else load(curves)
     chosen = _gases(gases, curve_set)
     if curve_set is not None:
         check_pair(curve_set, symbol, chosen[0])
-    defaults = tuple(name for name, (given, _) in conditions.items() if given is None)
     return Request(symbol, chosen, fill, method, curve_set, defaults)
 
 

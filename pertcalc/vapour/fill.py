@@ -13,6 +13,7 @@ from dataclasses import dataclass
 
 from pertcalc import constants
 from pertcalc.errors import InputError
+from pertcalc.names import DEFAULT_FILL_TEMPERATURE_K, DEFAULT_PRESSURE_TORR
 from pertcalc.units import density_cm3
 
 GAUSS_T = 1e-4
@@ -77,6 +78,27 @@ class Fill:
     def pressure_in_use_torr(self) -> float:
         """Pressure of the gas at the temperature of the cell [Torr], ``p T / T_fill``."""
         return self.pressure_torr * self.temperature_K / self.fill_temperature_K
+
+
+def fill_or_defaults(
+    alkali: str,
+    temperature_K: float | None = None,
+    pressure_torr: float | None = None,
+    fill_temperature_K: float | None = None,
+    field_G: float | None = None,
+) -> tuple[Fill, tuple[str, ...]]:
+    """A Fill with the default of this module for every value not given (None), and the names of those defaults.
+
+    Parameters: symbol ``alkali``; [K], [Torr], [K], [G]. Raises InputError as `Fill`.
+    """
+    conditions = {
+        "pressure": (pressure_torr, DEFAULT_PRESSURE_TORR),
+        "fill temperature": (fill_temperature_K, DEFAULT_FILL_TEMPERATURE_K),
+        "temperature": (temperature_K, DEFAULT_TEMPERATURE_K[alkali]),
+        "field": (field_G, DEFAULT_FIELD_G),
+    }
+    fill = Fill(*(default if given is None else given for given, default in conditions.values()))
+    return fill, tuple(name for name, (given, _) in conditions.items() if given is None)
 
 
 @dataclass(frozen=True, slots=True)
