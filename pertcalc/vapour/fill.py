@@ -92,12 +92,13 @@ def fill_or_defaults(
     Parameters: symbol ``alkali``; [K], [Torr], [K], [G]. Raises InputError as `Fill`.
     """
     conditions = {
+        "temperature": (temperature_K, DEFAULT_TEMPERATURE_K[alkali]),
         "pressure": (pressure_torr, DEFAULT_PRESSURE_TORR),
         "fill temperature": (fill_temperature_K, DEFAULT_FILL_TEMPERATURE_K),
-        "temperature": (temperature_K, DEFAULT_TEMPERATURE_K[alkali]),
         "field": (field_G, DEFAULT_FIELD_G),
     }
-    fill = Fill(*(default if given is None else given for given, default in conditions.values()))
+    T, p, T_fill, B = (default if given is None else given for given, default in conditions.values())
+    fill = Fill(pressure_torr=p, fill_temperature_K=T_fill, temperature_K=T, field_G=B)
     return fill, tuple(name for name, (given, _) in conditions.items() if given is None)
 
 
