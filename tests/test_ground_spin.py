@@ -16,7 +16,8 @@ from hypothesis import strategies as st
 
 from pertcalc.angular import clebsch_gordan, projections
 from pertcalc.errors import InputError
-from pertcalc.vapour.ground_spin import ground_relaxation, observable_rates, slowing_down
+from pertcalc.vapour.ground_spin import exchange_broadening, ground_relaxation, observable_rates, slowing_down
+from tests.vapour_cases import spin_matrices
 
 SPINS = (1, 1.5, 2.5, 3.5, 4)
 
@@ -115,3 +116,26 @@ def test_shape_follows_the_polarisation():
 def test_bad_input_is_one_clear_error(call, message):
     with pytest.raises(InputError, match=message):
         call()
+
+
+@pytest.mark.parametrize("I", [0.5, 1.0, 1.5, 2.5, 3.5, 4.0])
+def test_exchange_damps_the_precession_of_one_hyperfine_level(I: float) -> None:
+    """2I(2I-1)/[3(2I+1)^2]: 1/8 at I = 3/2, 7/32 at I = 7/2 (Happer and Tam 1977, FROM MEMORY)."""
+    assert exchange_broadening(I) == pytest.approx(2 * I * (2 * I - 1) / (3 * (2 * I + 1) ** 2), abs=1e-13)
+
+
+@pytest.mark.parametrize("I", [1.0, 1.5, 3.5])
+def test_exchange_damping_by_direct_sums_over_sublevels(I: float) -> None:
+    """Independent: apply R[phi (1 + 4<S>.S) - rho], linear in the polarisation, to F_x of the upper level alone."""
+    S = [np.kron(s, np.eye(round(2 * I + 1))) for s in spin_matrices(0.5)]
+    N = [np.kron(np.eye(2), n) for n in spin_matrices(I)]
+    F = [s + n for s, n in zip(S, N, strict=True)]
+    square = sum(f @ f for f in F)
+    upper = (square - (I - 0.5) * (I + 0.5) * np.eye(len(square))) / (2 * I + 1)  # projector on F = I + 1/2
+    rho = upper @ F[0] @ upper
+    phi = rho / 4 + sum(s @ rho @ s for s in S)
+    mean_S = [np.trace(rho @ s) for s in S]
+    returned = 4 / len(square) * sum(m * s for m, s in zip(mean_S, S, strict=True))
+    change = upper @ (phi + returned - rho) @ upper
+    decay = -np.trace(change @ rho) / np.trace(rho @ rho)
+    assert exchange_broadening(I) == pytest.approx(float(decay.real), rel=1e-12)

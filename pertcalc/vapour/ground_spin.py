@@ -17,8 +17,8 @@ from numpy.typing import ArrayLike, NDArray
 from pertcalc.angular import projections
 from pertcalc.errors import InputError
 from pertcalc.vapour.hyperfine import check_momenta
-from pertcalc.vapour.recoupling import relaxation
-from pertcalc.vapour.relaxation_matrix import Relaxation
+from pertcalc.vapour.recoupling import recoupling, relaxation
+from pertcalc.vapour.relaxation_matrix import Pair, Relaxation
 
 _J = 0.5
 
@@ -138,3 +138,35 @@ def slowing_down(I: float, P: ArrayLike = 0.0) -> NDArray[np.float64]:
     if float(I).is_integer():
         norm = norm + ratio[..., 0] ** I
     return np.where(tiny, low, 1 + 2 * mean / norm / safe[..., 0])
+
+
+def exchange_broadening(I: float) -> float:
+    """Damping of the precession of F = I + 1/2 by spin exchange, per unit exchange rate [1], at low polarisation.
+
+    ``sum_{kappa > 0} U(FF; 1 kappa)^2``: exchange destroys the products T_1(S) x T_kappa(I) and gives back what it
+    takes of <S>. Holds while the levels F = I +- 1/2, which turn opposite ways, separate faster than exchange mixes
+    them (Larmor frequency above the exchange rate); below, the damping falls towards zero with the field.
+
+    Parameters
+    ----------
+    I : float
+        Nuclear spin [hbar].
+
+    Returns
+    -------
+    factor : float
+        2I(2I-1)/[3(2I+1)^2] [1].
+
+    Raises
+    ------
+    InputError
+        I is no angular momentum.
+
+    Source
+    ------
+    Happer and Tam, Phys. Rev. A 16, 1877 (1977), FROM MEMORY; here from the recoupling matrix.
+    """
+    pairs, products, U = recoupling(_J, I, 1)
+    row = pairs.index(Pair(_J, I + _J, I + _J))
+    lost = [column for column, product in enumerate(products) if product.k == 1 and product.kappa > 0]
+    return float(np.sum(U[row, lost] ** 2))

@@ -1,0 +1,159 @@
+"""What a verdict is asked for: atom, gas, conditions, cell and light, checked once at the door."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from os import PathLike
+
+from pertcalc.curves.curveset import CurveSet
+from pertcalc.errors import InputError, UnknownNameError
+from pertcalc.names import METHODS
+from pertcalc.rates import load_curves
+from pertcalc.species import UPPER_LEVEL, alkali_symbol, noble_gas_symbol
+from pertcalc.vapour.cell import Cell, depolarisation_per_bounce, parse_cell
+from pertcalc.vapour.fill import Fill, fill_or_defaults
+
+NO_GAS = "none"
+DEFAULT_LINE = "D1"
+
+
+@dataclass(frozen=True, slots=True)
+class Light:
+    """Pumping light: ``power_W`` [W] in a uniform beam of ``beam_diameter_cm`` [cm], on ``line``, ``detuning_GHz``
+    [GHz] from the centre of gravity of the free line, with a Gaussian spectrum of ``linewidth_GHz`` full width [GHz].
+    """
+
+    power_W: float
+    beam_diameter_cm: float
+    line: str
+    detuning_GHz: float
+    linewidth_GHz: float
+
+
+@dataclass(frozen=True, slots=True)
+class Question:
+    """A checked order for a verdict; ``gas`` None means no buffer gas, ``light`` None no pumping.
+
+    ``beam_diameter_cm`` [cm] of the region looked at, None when it fills the cell; ``defaults`` names of the conditions
+    nobody gave.
+    """
+
+    alkali: str
+    gas: str | None
+    fill: Fill
+    cell: Cell | None
+    wall: str
+    light: Light | None
+    beam_diameter_cm: float | None
+    method: str
+    curves: CurveSet | None
+    defaults: tuple[str, ...]
+
+    @property
+    def gas_density_cm3(self) -> float:
+        """Density of the buffer gas [cm^-3], 0 without one."""
+        return 0.0 if self.gas is None else self.fill.density_cm3
+
+
+def ask(
+    alkali: str,
+    gas: str,
+    *,
+    temperature_K: float | None = None,
+    pressure_torr: float | None = None,
+    fill_temperature_K: float | None = None,
+    field_G: float | None = None,
+    cell: str | Cell | None = None,
+    wall: str = "bare",
+    power_W: float | None = None,
+    beam_diameter_cm: float | None = None,
+    line: str | None = None,
+    detuning_GHz: float | None = None,
+    linewidth_GHz: float | None = None,
+    method: str = METHODS[0],
+    curves: str | PathLike[str] | None = None,
+) -> Question:
+    """Fill in the defaults and check every value.
+
+    Parameters
+    ----------
+    alkali, gas : str
+        Symbols; gas "none" for a cell without buffer gas; the label of ``curves`` for a perturber of the user's own.
+    temperature_K, pressure_torr, fill_temperature_K, field_G : float or None
+        Conditions [K, Torr, K, G]; None takes the default of pertcalc.vapour.fill.
+    cell : str, Cell or None
+        As "sphere 25 mm"; None leaves walls out.
+    wall : str
+        "bare" or "coated".
+    power_W, beam_diameter_cm : float or None
+        Of the light [W, cm]; a beam without power still bounds the region looked at.
+    line : str or None
+        "D1" (default) or "D2".
+    detuning_GHz, linewidth_GHz : float or None
+        Of the light [GHz]; default 0.
+    method : str
+        "semiclassical" or "quantum".
+    curves : path or None
+        A curve file in place of the default set.
+
+    Returns
+    -------
+    Question
+
+    Raises
+    ------
+    InputError, UnknownNameError
+        Names every field that breaks its rule.
+    DataFileError
+        The curve file cannot be used.
+    """
+    symbol = alkali_symbol(alkali)
+    without = gas.strip().lower() == NO_GAS
+    if without:
+        _refuse({"--pressure": pressure_torr, "--fill-temperature": fill_temperature_K, "--curves": curves})
+    curve_set = None if without or curves is None else load_curves(symbol, gas, curves)
+    name = None if without else (curve_set.noble_gas if curve_set is not None else noble_gas_symbol(gas))
+    if method not in METHODS:
+        raise UnknownNameError("method", method, METHODS)
+    if method == "closed-form":
+        raise InputError(
+            "method = 'closed-form' does not know fine-structure transfer and the orientation of P1/2, which a verdict "
+            "needs. Take semiclassical or quantum."
+        )
+    fill, defaults = fill_or_defaults(symbol, temperature_K, pressure_torr, fill_temperature_K, field_G)
+    depolarisation_per_bounce(wall)  # refuses an unknown wall
+    light = _light(power_W, beam_diameter_cm, line, detuning_GHz, linewidth_GHz)
+    place = parse_cell(cell) if isinstance(cell, str) else cell
+    kept = tuple(one for one in defaults if not (without and one in ("pressure", "fill temperature")))
+    return Question(symbol, name, fill, place, wall, light, beam_diameter_cm, method, curve_set, kept)
+
+
+def _refuse(given: dict[str, object]) -> None:
+    """InputError for what has no meaning without a gas."""
+    unwanted = [name for name, value in given.items() if value is not None]
+    if unwanted:
+        raise InputError(f"gas = none has no {', '.join(unwanted)}: leave it out, or name a gas.")
+
+
+def _light(
+    power: float | None, beam: float | None, line: str | None, detuning: float | None, width: float | None
+) -> Light | None:
+    """The light asked for, None without any; InputError for half a description."""
+    if line is not None and line not in UPPER_LEVEL:
+        raise UnknownNameError("line", line, tuple(UPPER_LEVEL))
+    if beam is not None and not (math.isfinite(beam) and beam > 0):
+        raise InputError(f"--beam-diameter = {beam:g} cm must be finite and > 0; give another value.")
+    if power is None:
+        idle = {"--line": line, "--detuning": detuning, "--linewidth": width}
+        unwanted = [name for name, value in idle.items() if value is not None]
+        if unwanted:
+            raise InputError(f"{', '.join(unwanted)} given without --power: add --power, such as --power '10 mW'.")
+        return None
+    if beam is None:
+        raise InputError(
+            f"--power = {power:g} W needs the size of the beam: add --beam-diameter, such as --beam-diameter '5 mm'."
+        )
+    if not (math.isfinite(power) and power > 0):
+        raise InputError(f"--power = {power:g} W must be finite and > 0; give another value.")
+    return Light(power, beam, line or DEFAULT_LINE, detuning or 0.0, width or 0.0)
