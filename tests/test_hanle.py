@@ -126,6 +126,21 @@ def test_curves_against_brute_force_scattering(direction, beam):
         assert found.stokes_u[n] == pytest.approx((intensity["+45"] - intensity["-45"]) / total, abs=1e-11)
 
 
+@pytest.mark.parametrize("direction", GEOMETRIES)
+def test_emission_tensor_against_brute_force_for_a_tilted_excitation(direction):
+    """Light along no axis, seen from several sides: every component Q and the sense of every turn take part."""
+    nucleus, B = made_isotope(0.5, HYPERFINE[0]), 2.7
+    e = np.array([0.3, 0.8, -0.52]) / np.linalg.norm([0.3, 0.8, -0.52])
+    G = hanle_curves(rb_with(nucleus), "D2", GAS, [B]).G
+    tensor = emission_tensor(np.outer(e, e), direction, 0.5, G)[0]
+    whole = WholeLiouvillian(nucleus, GAS, B * DIRECTIONS[direction])
+    rho = whole.electron(np.linalg.solve(whole.L, whole.source("P3/2", dipole_operator(1.5, e))), "P3/2")
+    total = sum(np.trace(dipole_operator(1.5, axis) @ rho).real for axis in np.eye(3))
+    for seen in ([1, 0, 0], [0, 1, 0], [0, 0, 1], [0.6, 0.8, 0], [0.6, 0, 0.8], [0, 0.6, -0.8]):
+        intensity = np.trace(dipole_operator(1.5, np.array(seen)) @ rho).real / total
+        assert seen @ tensor @ seen == pytest.approx(intensity, abs=1e-11)
+
+
 # --- symmetries of the curves ------------------------------------------------------------------------------------
 
 
