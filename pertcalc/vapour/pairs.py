@@ -111,21 +111,10 @@ def pair_loss(
 
     omega_hf tau > 1: the atom turns as a whole (F-damping, gamma/[I], [I] = 2I+1); else the electron spin alone.
 
-    Parameters
-    ----------
-    alkali, gas : str
-    isotope : Isotope
-    density : float
-        Of the gas [cm^-3] > 0.
-    temperature_K : float
-        [K] > 0.
-    K, rotation : Sourced or None
-        Equilibrium constant [cm^3] and rms N [1], see `sticking`; without K the published one is taken.
+    Parameters: ``density`` of the gas [cm^-3] > 0, ``temperature_K`` [K] > 0, ``K`` equilibrium constant [cm^3] and
+    ``rotation`` rms N [1], see `sticking`; without K the published one is taken.
 
-    Returns
-    -------
-    PairLoss
-        Its rate [s^-1]; None with the reason where gamma, tau, K or N is not known.
+    Returns PairLoss, its rate [s^-1]; None with the reason where gamma, tau, K or N is not known.
     """
     pair = bound_pair(alkali, gas)
     if pair is None or pair.coupling_MHz is None or pair.lifetime_torr_s is None:
@@ -142,14 +131,13 @@ def pair_loss(
     coupling = pair.coupling_MHz * MHZ_RAD_S * rotation.value / (width if as_whole else 1.0)
     rate = pair_rate(K.value, density, tau, coupling)
     phi, between = coupling * tau, 1 / BETWEEN < turns < BETWEEN
-    form = f"F-damping, phi = gamma N tau/(hbar {width:g})" if as_whole else "S-damping, phi = gamma N tau/hbar"
+    form = f"whole atom: F-damping, phi = gamma N tau/(hbar {width:g})"
     note = (
-        f"on the {'whole atom' if as_whole else 'electron spin'}: {form} = {phi:.2g}, N = {rotation.value:.0f}, "
-        f"gamma/h = {pair.coupling_MHz:g} MHz, tau = {tau:.2g} s, K = {K.value:.2g} cm^3; errors of gamma and tau "
-        f"taken as {PAIR_ERROR:.0%}"
+        f"on the {form if as_whole else 'electron spin: S-damping, phi = gamma N tau/hbar'} = {phi:.2g}, "
+        f"N = {rotation.value:.0f}, gamma/h = {pair.coupling_MHz:g} MHz, tau = {tau:.2g} s, K = {K.value:.2g} cm^3; "
+        f"errors of gamma and tau taken as {PAIR_ERROR:.0%}"
+        + (f"; omega_hf tau = {turns:.2g} lies between the two forms" if between else "")
     )
-    if between:
-        note += f"; omega_hf tau = {turns:.2g} lies between the two forms"
     relative = _relative_error(phi, K, rotation, between)
     source = f"{pair.source}; K: {K.source}; N: {rotation.source}"
     mark = weakest_mark((pair.mark, K.mark, rotation.mark, COMPUTED))
