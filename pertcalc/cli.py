@@ -29,6 +29,7 @@ from pertcalc.cli_options import (
     rate_options,
     result_options,
 )
+from pertcalc.cli_verdict import verdict
 from pertcalc.errors import InputError, PertcalcError
 
 
@@ -249,6 +250,7 @@ def curves(
 
 
 cli.add_command(molecule)
+cli.add_command(verdict)
 
 
 @cli.command(short_help="Published checks, exact laws, and every measured value beside ours.")

@@ -1,7 +1,7 @@
 """The border: a user's words become plain numbers in fixed units, rate coefficients what a laboratory quotes.
 
 Words are matched against a small grammar (one number, one product of unit powers) before the unit library sees them, so
-no expression is ever evaluated. Border units: K, Torr, gauss, cm^-3, cm, W. notes/units.md.
+no expression is ever evaluated. Border units: K, Torr, gauss, cm^-3, cm, W, GHz. notes/units.md.
 """
 
 from __future__ import annotations
@@ -57,6 +57,7 @@ class Quantity:
     example: str
     zero_allowed: bool
     dimension: str
+    signed: bool = False
 
 
 QUANTITIES: dict[str, Quantity] = {
@@ -68,6 +69,7 @@ QUANTITIES: dict[str, Quantity] = {
         Quantity("field", "gauss", "'0.5 G' or '50 uT'", True, "a magnetic field"),
         Quantity("length", "cm", "'25 mm' or '1 inch'", False, "a length"),
         Quantity("power", "W", "'10 mW'", True, "a power"),
+        Quantity("frequency", "GHz", "'500 MHz' or '-2 GHz'", True, "a frequency", True),
     )
 }
 _PINT_UNITS = {
@@ -77,6 +79,7 @@ _PINT_UNITS = {
     "field": "lab_gauss",
     "length": "centimeter",
     "power": "watt",
+    "frequency": "gigahertz",
 }
 
 
@@ -151,7 +154,8 @@ def parse_quantity(kind: str, words: object, name: str | None = None, bare_unit:
     Parameters
     ----------
     kind : str
-        One of QUANTITIES: temperature [K], pressure [Torr], density [cm^-3], field [gauss], length [cm], power [W].
+        One of QUANTITIES: temperature [K], pressure [Torr], density [cm^-3], field [gauss], length [cm], power [W],
+        frequency [GHz].
     words : str
         One number and one unit; the unit may be a product of powers ('1/cm^3').
     name : str or None
@@ -162,7 +166,7 @@ def parse_quantity(kind: str, words: object, name: str | None = None, bare_unit:
     Returns
     -------
     value : float
-        In the border unit [K, Torr, cm^-3, gauss, cm or W]; finite, > 0 (field and power: >= 0).
+        In the border unit [K, Torr, cm^-3, gauss, cm, W or GHz]; finite, > 0 (field and power: >= 0, frequency: any).
 
     Raises
     ------
@@ -179,10 +183,13 @@ def parse_quantity(kind: str, words: object, name: str | None = None, bare_unit:
     unit = unit or bare_unit or ""
     if not unit:
         raise _problem(label, words, "a unit is missing", quantity)
+    if kind == "frequency" and not unit.lower().endswith("hz"):
+        # A rate per second may mean radians: the unit library would take 1 rad/s for 1 Hz.
+        raise _problem(label, words, f"{unit!r} is not in hertz", quantity)
     value = _convert(number, unit, words, label, quantity)
     if not math.isfinite(value):
         raise _problem(label, words, "the number must be finite", quantity)
-    if value < 0 or (value == 0 and not quantity.zero_allowed):
+    if (value < 0 and not quantity.signed) or (value == 0 and not quantity.zero_allowed):
         rule = "must not be negative" if quantity.zero_allowed else "must be above zero"
         if kind == "temperature":
             rule = f"is {value:g} K, and an absolute temperature must be above 0 K"

@@ -35,6 +35,7 @@ LAYERS = [
     "report",
     "cli_options",  # words only
     "cli_molecule",
+    "cli_verdict",
     "cli",
     "__main__",
 ]

@@ -217,3 +217,16 @@ def test_importing_units_does_not_load_the_unit_library():
     code = "import sys, pertcalc.units; raise SystemExit('pint' in sys.modules)"
     root = Path(units.__file__).parents[1]
     assert subprocess.run([sys.executable, "-c", code], check=False, cwd=root).returncode == 0
+
+
+@pytest.mark.parametrize(
+    ("words", "value"), [("-2 GHz", -2.0), ("500 MHz", 0.5), ("0 Hz", 0.0), ("1.5e3 kHz", 1.5e-3), ("3", 3.0)]
+)
+def test_a_frequency_has_a_sign_and_is_in_hertz(words, value):
+    assert units.parse_quantity("frequency", words, bare_unit="GHz") == pytest.approx(value, rel=1e-12)
+
+
+@pytest.mark.parametrize("words", ["2 rad/s", "2 1/s", "2 s", "2 mm", "nan GHz", "2 GHz 3"])
+def test_a_frequency_in_radians_or_anything_else_is_refused(words):
+    with pytest.raises(InputError, match="--detuning"):
+        units.parse_quantity("frequency", words, "--detuning", bare_unit="GHz")

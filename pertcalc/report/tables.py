@@ -73,5 +73,7 @@ def table(headers: Sequence[str], rows: Sequence[Sequence[str]], left: int = 1, 
 def wrapped(text: str, indent: str = "  ", first: str | None = None) -> list[str]:
     """A paragraph within WIDTH columns; ``first`` begins its first line in place of ``indent``."""
     lead = indent if first is None else first
-    # An address broken at a hyphen cannot be followed.
-    return textwrap.wrap(text, WIDTH, initial_indent=lead, subsequent_indent=indent, break_on_hyphens=False)
+    # A broken address cannot be followed; one longer than a line sticks out.
+    return textwrap.wrap(
+        text, WIDTH, initial_indent=lead, subsequent_indent=indent, break_on_hyphens=False, break_long_words=False
+    )

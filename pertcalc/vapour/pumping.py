@@ -246,6 +246,13 @@ def surviving_orientation(line: str, rates: LevelRates | None, quench_rate_s: fl
     return emitted[own] + emitted[other] * _RETURNED[other] / _RETURNED[own]
 
 
+def pumping_kind(surviving: float) -> str:
+    """Name of the pumping by the surviving orientation [1]: "depopulation" below 0.1, "repopulation" above 0.9."""
+    if abs(surviving) < _DEPOPULATION:
+        return "depopulation"
+    return "repopulation" if surviving > _REPOPULATION else "mixed"
+
+
 def spin_coefficients(line: str, surviving: float) -> tuple[float, float]:
     """Gain and damping of ``dS/dt = R (gain s/2 - damping S)`` per absorption rate R of the unpolarised atom.
 
@@ -263,7 +270,7 @@ def spin_coefficients(line: str, surviving: float) -> tuple[float, float]:
 
 def _spin_pumping(line: str, s: float, rate: float, a: float, q: float, loss_error: float | None) -> SpinPumping:
     gain, damping = spin_coefficients(line, a)
-    kind = "depopulation" if abs(a) < _DEPOPULATION else "repopulation" if a > _REPOPULATION else "mixed"
+    kind = pumping_kind(a)
     photons, reason = None, None
     if line == "D2":
         reason = "D2 has no dark sublevel: absorption never stops"

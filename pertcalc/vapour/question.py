@@ -13,22 +13,20 @@ from pertcalc.rates import load_curves
 from pertcalc.species import UPPER_LEVEL, alkali_symbol, noble_gas_symbol
 from pertcalc.vapour.cell import Cell, depolarisation_per_bounce, parse_cell
 from pertcalc.vapour.fill import Fill, fill_or_defaults
+from pertcalc.vapour.pumping import Beam
 
 NO_GAS = "none"
 DEFAULT_LINE = "D1"
+# A usual cell: common practice, no source.
+DEFAULT_CELL = "sphere 25 mm"
 
 
 @dataclass(frozen=True, slots=True)
 class Light:
-    """Pumping light: ``power_W`` [W] in a uniform beam of ``beam_diameter_cm`` [cm], on ``line``, ``detuning_GHz``
-    [GHz] from the centre of gravity of the free line, with a Gaussian spectrum of ``linewidth_GHz`` full width [GHz].
-    """
+    """Pumping light: a ``beam`` tuned to ``line`` "D1" or "D2"."""
 
-    power_W: float
-    beam_diameter_cm: float
     line: str
-    detuning_GHz: float
-    linewidth_GHz: float
+    beam: Beam
 
 
 @dataclass(frozen=True, slots=True)
@@ -42,7 +40,7 @@ class Question:
     alkali: str
     gas: str | None
     fill: Fill
-    cell: Cell | None
+    cell: Cell
     wall: str
     light: Light | None
     beam_diameter_cm: float | None
@@ -83,7 +81,7 @@ def ask(
     temperature_K, pressure_torr, fill_temperature_K, field_G : float or None
         Conditions [K, Torr, K, G]; None takes the default of pertcalc.vapour.fill.
     cell : str, Cell or None
-        As "sphere 25 mm"; None leaves walls out.
+        As "cylinder 25 mm x 50 mm"; None takes DEFAULT_CELL.
     wall : str
         "bare" or "coated".
     power_W, beam_diameter_cm : float or None
@@ -91,7 +89,7 @@ def ask(
     line : str or None
         "D1" (default) or "D2".
     detuning_GHz, linewidth_GHz : float or None
-        Of the light [GHz]; default 0.
+        Of the light [GHz]; default the peak of the absorption, and narrow.
     method : str
         "semiclassical" or "quantum".
     curves : path or None
@@ -124,8 +122,9 @@ def ask(
     fill, defaults = fill_or_defaults(symbol, temperature_K, pressure_torr, fill_temperature_K, field_G)
     depolarisation_per_bounce(wall)  # refuses an unknown wall
     light = _light(power_W, beam_diameter_cm, line, detuning_GHz, linewidth_GHz)
-    place = parse_cell(cell) if isinstance(cell, str) else cell
+    place = cell if isinstance(cell, Cell) else parse_cell(DEFAULT_CELL if cell is None else cell)
     kept = tuple(one for one in defaults if not (without and one in ("pressure", "fill temperature")))
+    kept += ("cell",) if cell is None else ()
     return Question(symbol, name, fill, place, wall, light, beam_diameter_cm, method, curve_set, kept)
 
 
@@ -137,23 +136,21 @@ def _refuse(given: dict[str, object]) -> None:
 
 
 def _light(
-    power: float | None, beam: float | None, line: str | None, detuning: float | None, width: float | None
+    power: float | None, diameter: float | None, line: str | None, detuning: float | None, width: float | None
 ) -> Light | None:
     """The light asked for, None without any; InputError for half a description."""
     if line is not None and line not in UPPER_LEVEL:
         raise UnknownNameError("line", line, tuple(UPPER_LEVEL))
-    if beam is not None and not (math.isfinite(beam) and beam > 0):
-        raise InputError(f"--beam-diameter = {beam:g} cm must be finite and > 0; give another value.")
     if power is None:
         idle = {"--line": line, "--detuning": detuning, "--linewidth": width}
         unwanted = [name for name, value in idle.items() if value is not None]
         if unwanted:
             raise InputError(f"{', '.join(unwanted)} given without --power: add --power, such as --power '10 mW'.")
+        if diameter is not None and not (math.isfinite(diameter) and diameter > 0):
+            raise InputError(f"--beam-diameter = {diameter:g} cm must be finite and > 0; give another value.")
         return None
-    if beam is None:
+    if diameter is None:
         raise InputError(
             f"--power = {power:g} W needs the size of the beam: add --beam-diameter, such as --beam-diameter '5 mm'."
         )
-    if not (math.isfinite(power) and power > 0):
-        raise InputError(f"--power = {power:g} W must be finite and > 0; give another value.")
-    return Light(power, beam, line or DEFAULT_LINE, detuning or 0.0, width or 0.0)
+    return Light(line or DEFAULT_LINE, Beam(power, diameter, detuning, width or 0.0))

@@ -167,8 +167,11 @@ def _warnings(line: AbsorptionLine, depth: float, to_wall: float, reabsorbed: fl
         )
     if matters:
         found.append(
-            f"{line.line}: depth {to_wall:.3g} to the wall, {reabsorbed:.3g} photons reabsorbed per excited atom: "
-            f"{INVALIDATES}. For pumping a quenching gas is necessary (nitrogen: common practice, no source)."
+            f"{line.line}: optical depth {to_wall:.3g} to the wall, {reabsorbed:.3g} photons reabsorbed per excitation."
+        )
+        found.append(
+            f"Radiation trapping: {INVALIDATES}. For pumping a quenching gas is necessary (nitrogen: common practice, "
+            "no source)."
         )
     return tuple(found)
 

@@ -1,0 +1,232 @@
+"""A verdict as text of at most 100 columns: one sentence per level, the table of all rates, and what they rest on."""
+
+from __future__ import annotations
+
+from pertcalc.report.report_text import Citations
+from pertcalc.report.tables import UNKNOWN, WIDTH, number, percent, table, wrapped
+from pertcalc.report.verdict_words import READING, VISIBLE, mixing_sentence, sentences
+from pertcalc.report.words import CAUTIONS
+from pertcalc.species import Sourced
+from pertcalc.vapour.excited import RankBalance
+from pertcalc.vapour.fill import DEFAULTS_ORIGIN
+from pertcalc.vapour.ground import GroundProcess
+from pertcalc.vapour.verdict import Verdict
+
+CELSIUS_ZERO_K = 273.15
+
+
+def verdict_text(found: Verdict) -> str:
+    """The whole verdict."""
+    cite = Citations()
+    lines = _head(found, cite)
+    lines += ["", _title("What rules each level")]
+    for sentence in sentences(found).values():
+        lines += wrapped(sentence, "    ", "  ")
+    lines += ["", *_excited(found)]
+    lines += ["", *_ground(found, cite)]
+    lines += ["", *_scattering(found)]
+    lines += ["", *_light(found)]
+    lines += ["", *_models(found)]
+    if found.warnings:
+        lines += ["", _title("Warnings"), *(line for one in found.warnings for line in wrapped(one, "    ", "  - "))]
+    lines += ["", _title("Sources"), *cite.lines()]
+    lines += ["", _title("How to read the numbers"), *(line for note in READING for line in wrapped(note))]
+    lines += ["", _title("Cautions"), *(line for note in CAUTIONS for line in wrapped(note, "    ", "  - "))]
+    return "\n".join(lines)
+
+
+def _title(words: str) -> str:
+    return f"== {words} ".ljust(WIDTH, "=")
+
+
+def _head(found: Verdict, cite: Citations) -> list[str]:
+    question, fill, n = found.question, found.question.fill, found.question.gas_density_cm3
+    gas = "without buffer gas" if question.gas is None else f"in {question.gas}"
+    method = "" if found.rates is None else f", method {question.method}, curves {found.rates.curves_id}"
+    rows = [
+        ("temperature", "temperature", f"{fill.temperature_K:.6g} K ({fill.temperature_K - CELSIUS_ZERO_K:.4g} degC)")
+    ]
+    if question.gas is not None:
+        rows += [
+            ("pressure", "fill", f"{fill.pressure_torr:.6g} Torr"),
+            ("fill temperature", "fill at", f"{fill.fill_temperature_K:.6g} K; n = {n:.4e} cm^-3"),
+        ]
+    rows.append(("field", "field", f"{fill.field_G:.6g} G"))
+    rows.append(("cell", "cell", f"{question.cell.words}, {question.wall} wall"))
+    lines = [f"{question.alkali} {gas}{method}: what rules the polarisation", ""]
+    for name, words, value in rows:
+        given = f"  default ({DEFAULTS_ORIGIN})" if name in question.defaults else ""
+        lines.append(f"  {words:14}{value:42}{given}".rstrip())
+    if question.light is not None:
+        beam = question.light.beam
+        tuned = "the peak" if beam.detuning_GHz is None else f"{beam.detuning_GHz:g} GHz"
+        lines.append(
+            f"  {'light':14}{question.light.line}, {beam.power_W * 1e3:g} mW in {beam.diameter_cm:g} cm, circular, at "
+            f"{tuned}"
+        )
+    density = found.vapour.density_cm3
+    lines.append(
+        f"  {question.alkali + ' density':14}{_value(density, 'cm^-3')} over the {found.vapour.phase} "
+        f"{cite(_origin(density))}; hyperfine structure of {found.isotope.label}"
+    )
+    return lines
+
+
+def _origin(value: Sourced) -> str:
+    return f"{value.mark}: {value.source}"
+
+
+def _value(value: Sourced | None, unit: str = "") -> str:
+    """``value +- error unit``: in per cent, or absolute where it is as large as the value."""
+    if value is None:
+        return UNKNOWN
+    if value.value == 0:
+        return "0"
+    if value.error is not None and value.error >= abs(value.value):
+        error = number(value.error, 2)
+    else:
+        error = percent(None if value.error is None else abs(value.error / value.value))
+    return f"{number(value.value, 3)} +- {error} {unit}".rstrip()
+
+
+def _excited(found: Verdict) -> list[str]:
+    headers = ["level", "K", "decay\ns^-1", "collisions\ns^-1", "Larmor\nrad/s", "Hanle field, G\nfree -> here",
+               "who wins,\nby a factor", "crossover\nTorr", "crossover\nG"]  # fmt: skip
+    rows = [
+        _rank_row(balance, K == VISIBLE[level])
+        for level, ranks in found.balances.items()
+        for K, balance in ranks.items()
+    ]
+    lines = [_title("Excited levels: every rank"), *table(headers, rows)]
+    for level, where in found.regimes.items():
+        balance = found.balances[level][VISIBLE[level]]
+        words = {
+            "g_J": f"rank K is electronic, with g_J = {_g(found, level)}",
+            "g_F": f"rank K belongs to each F, with its g_F; the table has {balance.field_with}",
+            None: "neither g_J nor g_F holds: the relaxation matrix and the full curve do (--plot-hanle); the table "
+            f"has {balance.field_with}",
+        }[where.g_factor]
+        lines += wrapped(
+            f"{level}: hyperfine structure of {where.isotope} {where.structure} within decay and collisions, nuclear "
+            f"spin {where.nucleus} in this field: {words}.",
+            "    ",
+            "  ",
+        )
+    return lines
+
+
+def _g(found: Verdict, level: str) -> str:
+    return number(next(one.g for one in found.fields[level] if one.F is None), 4)
+
+
+def _rank_row(balance: RankBalance, visible: bool) -> list[str]:
+    hanle = f"{number(balance.hanle_free_G, 3)} -> {number(balance.hanle_G, 3)}"
+    return [
+        f"{balance.level}{'*' if visible else ''}",
+        str(balance.rank),
+        number(balance.radiative.value, 3),
+        _value(balance.collisional),
+        number(balance.larmor, 3),
+        hanle,
+        balance.dominant.replace("radiative ", "")
+        + (f" {number(balance.factor, 2)}" if balance.ranking[1][1] > 0 else ""),
+        number(balance.crossover_pressure_torr, 3),
+        number(balance.crossover_field_G, 3),
+    ]
+
+
+def _ground(found: Verdict, cite: Citations) -> list[str]:
+    ground = found.ground
+    rows = [_process_row(p, d, cite) for p, d in zip(ground.processes, ground.decays, strict=True)]
+    rows.append(["sum of the known", "", _value(ground.total), "" if ground.total is None else ground.total.mark, ""])
+    if ground.pumping is not None:
+        rows.append(["pumping light", "", _value(ground.pumping), ground.pumping.mark, ""])
+    rows.append(["field, F = I + 1/2", "", f"{number(ground.larmor, 3)} rad/s", "", f"g_F = {number(ground.g_F, 4)}"])
+    headers = ["process", "rate\ns^-1", "decay of <F_z>\ns^-1", "mark", "source"]
+    lines = [_title(f"Ground level S1/2 of {ground.isotope.label}"), *table(headers, rows)]
+    lines += [
+        line for p in ground.processes if p.rate is None for line in wrapped(f"{p.name}: {p.reason}", "    ", "  ")
+    ]
+    regime = (
+        "spin exchange is fastest: a spin temperature holds" if ground.fast_exchange else "spin exchange is not fastest"
+    )
+    fields = ", ".join(f"{number(one.field_G, 3)} G ({words})" for words, one in ground.hanle.items())
+    lines += wrapped(f"{regime}. Hanle fields: {fields or 'none, no rate is known'}.", "    ", "  ")
+    if found.diffusion is not None:
+        n, spread = found.question.gas_density_cm3, found.diffusion
+        lines += wrapped(
+            f"diffusion: D = {number(spread.chosen.value / n, 3)} cm^2/s in this cell {cite(_origin(spread.chosen))}; "
+            f"computed from curve X {number(spread.computed.value / n, 3)} cm^2/s. {spread.reason}",
+            "    ",
+            "  ",
+        )
+    return lines
+
+
+def _process_row(acts: GroundProcess, decays: GroundProcess, cite: Citations) -> list[str]:
+    mark, source = ("", "") if acts.rate is None else (acts.rate.mark, cite(_origin(acts.rate)))
+    decay = "destroys none" if not acts.destroys else _value(decays.rate)
+    return [acts.name, _value(acts.rate), decay, mark, source]
+
+
+def _scattering(found: Verdict) -> list[str]:
+    rows = []
+    for line, one in found.scattering.items():
+        parts = ", ".join(f"{label} {number(W2, 3)}" for label, W2 in one.by_isotope.items())
+        W2 = number(one.W2.value, 3) + (f" +- {number(one.W2.error, 2)}" if one.W2.error else "")
+        rows.append([line, W2, number(one.unpolarised, 3), number(one.linear, 3), number(one.electronic, 3), parts])
+    headers = ["line", "W2", "P at 90 deg\nunpolarised", "p at 90 deg\nlinear", "W2 without\nnuclear spin", "isotopes"]
+    return [_title("Scattered light at zero field, natural mixture (COMPUTED)"), *table(headers, rows)]
+
+
+def _light(found: Verdict) -> list[str]:
+    rows = []
+    for line, one in found.lines.items():
+        trapped = found.trapping[line]
+        rows.append(
+            [
+                line,
+                number(one.lorentz_fwhm_GHz, 3),
+                number(one.shift_GHz, 3, sign=True),
+                number(one.doppler_fwhm_GHz, 3),
+                one.resolution("S1/2"),
+                number(one.peak()[1], 3),
+                _value(trapped.optical_depth),
+                "needed" if trapped.matters else "not needed",
+            ]
+        )
+    headers = ["line", "Lorentz\nGHz", "shift\nGHz", "Doppler\nGHz", "ground\nhyperfine", "peak\ncm^2", "optical depth",
+               "quenching\ngas"]  # fmt: skip
+    lines = [_title("Absorption and pumping (COMPUTED)"), *table(headers, rows)]
+    for mixing in found.mixing.values():
+        lines += wrapped(mixing_sentence(mixing), "    ", "  ")
+    beam = found.pumping
+    if beam is None:
+        return [*lines, *wrapped("no light given: add --power '1 mW' --beam-diameter '5 mm' for pumping rates.")]
+    spin = beam.spin
+    photons = (
+        spin.reason if spin.photons_per_atom is None else f"{_value(spin.photons_per_atom)} photons per polarised atom"
+    )
+    field = "" if beam.light_shift_field_G is None else f" (effective field {_value(beam.light_shift_field_G, 'G')})"
+    lines += wrapped(
+        f"pumping on {beam.line}: absorption {_value(beam.rate, 's^-1')}, light shift "
+        f"{_value(beam.light_shift, 'rad/s')}{field}, saturation parameter {number(beam.saturation, 2)}, {spin.kind} "
+        f"pumping, {photons}, 1/e time {number(spin.time_s, 2)} s without relaxation.",
+        "    ",
+        "  ",
+    )
+    return lines
+
+
+def _models(found: Verdict) -> list[str]:
+    rows = []
+    for one in found.models.values():
+        row = [one.line, number(one.gamma_R, 4)]
+        for key, value in (("gamma_I", one.gamma_I), ("gamma_E", one.gamma_E)):
+            row.append(f"{number(value, 3)} +- {percent(one.errors.get(key))}" if value else "0")
+        for K in (1, 2, 3):
+            D = one.depolarising.get(K)
+            row.append(UNKNOWN if D is None else f"{number(D, 3)} +- {percent(one.errors.get(f'D{K}'))}" if D else "0")
+        rows.append(row)
+    headers = ["line", "Gamma_R", "Gamma_I", "Gamma_E", "D1", "D2", "D3"]
+    return [_title("For a model of polarised lines, s^-1 (COMPUTED; --csv has them)"), *table(headers, rows)]

@@ -1,0 +1,115 @@
+"""Sentences of a verdict: one per level, and how to read the numbers."""
+
+from __future__ import annotations
+
+from pertcalc.report.tables import number
+from pertcalc.vapour.excited import COLLISIONS, DECAY, FIELD, RankBalance
+from pertcalc.vapour.fill import COMPARABLE
+from pertcalc.vapour.ground_balance import PUMPING, GroundBalance
+from pertcalc.vapour.verdict import Mixing, Verdict
+
+RANK_WORDS = {1: "orientation", 2: "alignment", 3: "octupole"}
+# The rank of each level that one sees: orientation of P1/2, alignment of P3/2.
+VISIBLE = {"P1/2": 1, "P3/2": 2}
+
+READING = (
+    "Collisions of a P level: n times the total loss of the electronic multipole K, outflow to the other level "
+    f"included; COMPUTED. * marks the rank one sees. Effects within a factor {COMPARABLE:g} are called comparable.",
+    "Hanle field: equal Larmor frequency and damping, hbar damping/(g mu_B); rank-2 signals have half of it as half "
+    "width. g_J holds where the nuclear spin is decoupled or unresolved, g_F where hyperfine structure is resolved.",
+    "Crossover: fill pressure at which collisions equal the larger of decay and field; field at which the Larmor "
+    "frequency equals the larger of decay and collisions. In the ground level the pressure is that where walls and "
+    "transit relax as much as the gas, the field that of equal Larmor frequency and damping.",
+    "Ground level: decay of the longitudinal orientation <F_z>; the nucleus slows what acts on the electron only (G/q "
+    "at a spin temperature, 2G/(2I+1)^2 without spin exchange). Spin exchange destroys no orientation.",
+    "W2: scattering polarisability for broad-band light and an unpolarised ground level; no reabsorption in it.",
+    "Gamma_I: outflow to the other level; Gamma_E + Gamma_I: collisional full width; D_K = n (loss_K - loss_0).",
+)
+
+
+def level_sentence(balance: RankBalance) -> str:
+    """One sentence on one rank of a P level: who wins, by what factor, and where that changes."""
+    what = f"{balance.level}: "
+    rank = f"{RANK_WORDS[balance.rank]} (K={balance.rank})"
+    if len(balance.comparable) > 1:
+        first = f"{' and '.join(balance.comparable)} weigh about equally on the {rank}"
+    else:
+        beaten = balance.ranking[1][0]
+        factor = f"{number(balance.factor, 2)} times {beaten}" if balance.ranking[1][1] > 0 else "alone"
+        first = f"{balance.dominant} {_rules(balance.dominant)} the {rank}, {factor}"
+    return f"{what}{first}{_changes(balance)}."
+
+
+def _rules(effect: str) -> str:
+    return "rule" if effect == COLLISIONS else "rules"
+
+
+def _changes(balance: RankBalance) -> str:
+    """Where the answer changes: for each effect that does not rule, when it would."""
+    parts = []
+    p = balance.crossover_pressure_torr
+    if p is not None:
+        rival = FIELD if balance.larmor > balance.radiative.value else DECAY
+        side = "below" if balance.dominant == COLLISIONS else "above"
+        taken = f"{rival} does" if side == "below" else "collisions do"
+        parts.append(f"{side} {_with_error(p, balance.crossover_pressure_error)} Torr {taken}")
+    if balance.dominant != FIELD:
+        parts.append(f"above {number(balance.crossover_field_G, 3)} G the field does")
+    else:
+        rival = COLLISIONS if balance.collisional.value > balance.radiative.value else DECAY
+        parts.append(
+            f"below {number(balance.crossover_field_G, 3)} G {rival} {'do' if rival == COLLISIONS else 'does'}"
+        )
+    return "; " + ", ".join(parts)
+
+
+def _with_error(value: float, relative: float | None) -> str:
+    return number(value, 3) if relative is None else f"{number(value, 3)} +- {number(abs(value) * relative, 2)}"
+
+
+def ground_sentence(ground: GroundBalance) -> str:
+    """One sentence on the orientation of the ground level: along the field, under the light, across the field."""
+    top, total = ground.strongest, ground.total
+    if top is None or top.rate is None or total is None:
+        parts = ["S1/2: no relaxation rate of the orientation is known here"]
+    else:
+        first = top.name if len(ground.comparable) == 1 else " and ".join(ground.comparable)
+        verb = "relaxes" if len(ground.comparable) == 1 else "relax"
+        parts = [
+            f"S1/2: {first} {verb} the orientation most ({number(top.rate.value, 2)} of {number(total.value, 2)} s^-1, "
+            f"lifetime {number(1 / total.value, 2)} s)"
+        ]
+    if ground.unknown:
+        parts.append(f"unknown: {', '.join(ground.unknown)}")
+    if ground.pumping is not None and total is not None:
+        parts.append(f"{PUMPING} acts {number(ground.pumping.value / total.value, 2)} times as fast")
+    if (field := ground.crossover_field_G) is not None:
+        here = "as here" if ground.dominant == FIELD else "not reached here"
+        parts.append(f"a field across it above {number(field, 2)} G ({here}) turns it away first")
+    if ground.crossover_pressure_torr is not None:
+        parts.append(f"walls and gas relax it equally at {number(ground.crossover_pressure_torr, 3)} Torr")
+    return "; ".join(parts) + "."
+
+
+def sentences(found: Verdict) -> dict[str, str]:
+    """Level -> its sentence, ground level first."""
+    levels = {level: level_sentence(ranks[VISIBLE[level]]) for level, ranks in found.balances.items()}
+    return {"S1/2": ground_sentence(found.ground)} | levels
+
+
+def mixing_sentence(mixing: Mixing) -> str:
+    """Whether collisions mix the upper level of a line before it decays, and what pumping on the line then is."""
+    against = {
+        "depopulation": "faster than it decays",
+        "repopulation": "more slowly than it decays",
+        "mixed": "about as fast as it decays",
+    }[mixing.pumping]
+    error = "" if mixing.error is None else f" +- {number(mixing.error, 2)}"
+    photons = ""
+    if mixing.photons_per_atom is not None:
+        photons = f", {number(mixing.photons_per_atom, 3)} photons per polarised atom"
+    return (
+        f"{mixing.line}: collisions mix {mixing.level} {against} (loss of orientation/decay {number(mixing.ratio, 3)}"
+        f"{error}), {number(100 * mixing.surviving, 2)} % of its orientation returns by emission: {mixing.pumping} "
+        f"pumping{photons}."
+    )

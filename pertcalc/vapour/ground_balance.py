@@ -1,0 +1,246 @@
+"""The ground level in a cell: what relaxes its orientation, beside pumping light and field, and where that changes."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterable
+from dataclasses import dataclass, replace
+
+from pertcalc.species import COMPUTED, Alkali, Isotope, Sourced
+from pertcalc.vapour.excited import FIELD
+from pertcalc.vapour.fill import COMPARABLE
+from pertcalc.vapour.ground import (
+    TRANSIT,
+    WALL,
+    GroundProcess,
+    Surroundings,
+    exchange_is_fast,
+    ground_processes,
+    orientation_decay,
+)
+from pertcalc.vapour.ground_spin import exchange_broadening
+from pertcalc.vapour.hanle_fields import HanleField, ground_hanle_field
+from pertcalc.vapour.pairs import PAIRS
+from pertcalc.vapour.process import weakest_mark
+from pertcalc.vapour.pumping import Pumping
+from pertcalc.vapour.question import Question
+from pertcalc.vapour.spin_destruction import BY_GAS, EXCHANGE
+
+PUMPING = "pumping light"
+_OF_THE_GAS = (BY_GAS, PAIRS)
+# Densities searched for the crossover of walls and gas lie within this factor of that of the cell.
+_REACH = 1e6
+
+
+@dataclass(frozen=True, slots=True)
+class GroundBalance:
+    """What pulls at the orientation of the ground level of one isotope.
+
+    ``around`` what it is surrounded by; ``processes`` as they act and ``decays`` as decay rates of <F_z> [s^-1];
+    ``fast_exchange`` whether a spin temperature holds; ``total`` sum of the known decays [s^-1], None if none is known;
+    ``unknown`` names of processes without a rate; ``pumping`` rate at which the light damps the orientation [s^-1] or
+    None; ``larmor`` [rad/s] of F = I + 1/2; ``exchange`` damping of the precession by spin exchange [s^-1] or None;
+    ``hanle`` words for the damping -> Hanle field; ``ranking`` effects and rates, largest first;
+    ``crossover_pressure_torr`` where walls and transit equal the gas, at the fill temperature [Torr], or None.
+    """
+
+    atom: Alkali
+    isotope: Isotope
+    around: Surroundings
+    processes: tuple[GroundProcess, ...]
+    decays: tuple[GroundProcess, ...]
+    fast_exchange: bool
+    total: Sourced | None
+    unknown: tuple[str, ...]
+    pumping: Sourced | None
+    larmor: float
+    g_F: float
+    exchange: Sourced | None
+    hanle: dict[str, HanleField]
+    ranking: tuple[tuple[str, float], ...]
+    crossover_pressure_torr: float | None
+
+    @property
+    def dominant(self) -> str:
+        """The largest of relaxation processes, pumping light and field."""
+        return self.ranking[0][0]
+
+    @property
+    def factor(self) -> float:
+        """By how much the largest exceeds the next [1]; inf when nothing else is known."""
+        return self.ranking[0][1] / self.ranking[1][1] if len(self.ranking) > 1 and self.ranking[1][1] > 0 else math.inf
+
+    @property
+    def strongest(self) -> GroundProcess | None:
+        """The process that relaxes the orientation most, None if no rate is known."""
+        known = [p for p in self.decays if p.destroys and p.rate is not None]
+        return max(known, key=_rate, default=None)
+
+    @property
+    def comparable(self) -> tuple[str, ...]:
+        """Names of the relaxation processes within a factor COMPARABLE of the strongest."""
+        top = self.strongest
+        if top is None:
+            return ()
+        return tuple(p.name for p in self.decays if p.destroys and p.rate and _rate(p) * COMPARABLE >= _rate(top))
+
+    @property
+    def crossover_field_G(self) -> float | None:
+        """Field at which the Larmor frequency equals all damping along the beam, pumping included [G]."""
+        widest = [field.field_G for words, field in self.hanle.items() if "exchange" not in words]
+        return max(widest, default=None)
+
+
+def ground_balance(
+    question: Question,
+    atom: Alkali,
+    isotope: Isotope,
+    density: Sourced,
+    diffusion_nD: Sourced | None,
+    sticking: tuple[Sourced, Sourced] | None,
+    beam: Pumping | None,
+) -> GroundBalance:
+    """Every process of the ground level of an isotope, its Hanle fields and crossovers.
+
+    Parameters
+    ----------
+    question : Question
+    atom, isotope : Alkali, Isotope
+    density : Sourced
+        Of the alkali [cm^-3].
+    diffusion_nD : Sourced or None
+        Diffusion coefficient times gas density [cm^-1 s^-1].
+    sticking : tuple of Sourced or None
+        Equilibrium constant [cm^3] and rotation N [1] of the weakly bound pairs; `pertcalc.vapour.pairs.sticking`.
+    beam : Pumping or None
+        The pumping light.
+
+    Returns
+    -------
+    GroundBalance
+
+    Raises
+    ------
+    InputError
+        As `pertcalc.vapour.ground.Surroundings`.
+    """
+    around = Surroundings(
+        question.fill.temperature_K,
+        question.cell,
+        question.wall,
+        question.gas,
+        question.gas_density_cm3 if question.gas is not None else None,
+        density,
+        diffusion_nD,
+        question.beam_diameter_cm,
+        *(sticking or (None, None)),
+    )
+    processes = ground_processes(atom, isotope, around)
+    decays = orientation_decay(processes, isotope.nuclear_spin)
+    total = _total(decays)
+    light = None if beam is None else Sourced(
+        beam.spin.damping, "s^-1", "absorption of the pumping light", COMPUTED, _scaled(beam.rate, beam.spin.damping)
+    )  # fmt: skip
+    hanle = _hanle(isotope, total, light, exchange := _exchange(processes, isotope))
+    one_gauss = ground_hanle_field(isotope, 1.0)
+    effects = [(p.name, _rate(p)) for p in decays if p.destroys and p.rate is not None]
+    if light is not None:
+        effects.append((PUMPING, light.value))
+    larmor = question.fill.field_G / one_gauss.field_G  # a damping of 1 s^-1 has its Hanle field at 1 rad/s
+    effects.append((FIELD, larmor))
+    found = GroundBalance(
+        atom,
+        isotope,
+        around,
+        processes,
+        decays,
+        exchange_is_fast(processes),
+        total,
+        tuple(p.name for p in decays if p.destroys and p.rate is None),
+        light,
+        larmor,
+        one_gauss.g,
+        exchange,
+        hanle,
+        tuple(sorted(effects, key=lambda effect: -effect[1])),
+        None,
+    )
+    factor = _crossover_factor(found)
+    return found if factor is None else replace(found, crossover_pressure_torr=factor * question.fill.pressure_torr)
+
+
+def _rate(process: GroundProcess) -> float:
+    return 0.0 if process.rate is None else process.rate.value
+
+
+def _scaled(of: Sourced, value: float) -> float | None:
+    return None if of.error is None or of.value == 0 else abs(value) * of.error / of.value
+
+
+def _sum(parts: Iterable[Sourced], what: str) -> Sourced | None:
+    """Sum of rates; the error is None as soon as one part has none."""
+    rates = list(parts)
+    if not rates:
+        return None
+    errors = [one.error for one in rates if one.error is not None]
+    error = math.hypot(*errors) if len(errors) == len(rates) else None
+    return Sourced(
+        sum(one.value for one in rates), "s^-1", what, weakest_mark([COMPUTED, *(one.mark for one in rates)]), error
+    )
+
+
+def _total(decays: Iterable[GroundProcess]) -> Sourced | None:
+    return _sum((p.rate for p in decays if p.destroys and p.rate is not None), "sum of the known processes")
+
+
+def _exchange(processes: Iterable[GroundProcess], isotope: Isotope) -> Sourced | None:
+    """Damping of the precession by spin exchange, for a Larmor frequency above the exchange rate."""
+    rate = next((p.rate for p in processes if p.name == EXCHANGE), None)
+    if rate is None:
+        return None
+    factor = exchange_broadening(isotope.nuclear_spin)
+    error = None if rate.error is None else rate.error * factor
+    return replace(
+        rate, value=rate.value * factor, error=error, source=f"{factor:.4g} times the exchange rate; {rate.source}"
+    )
+
+
+def _hanle(
+    isotope: Isotope, total: Sourced | None, light: Sourced | None, exchange: Sourced | None
+) -> dict[str, HanleField]:
+    """Hanle fields of F = I + 1/2 for relaxation alone, then with light, then with spin exchange."""
+    found, damping, words = {}, 0.0, []
+    for name, part in (("relaxation", total), ("pumping", light), ("spin exchange", exchange)):
+        if part is None:
+            continue
+        damping += part.value
+        words.append(name)
+        found[" + ".join(words)] = ground_hanle_field(isotope, damping)
+    return found
+
+
+def decays_at(balance: GroundBalance, factor: float) -> tuple[GroundProcess, ...]:
+    """The decays of <F_z> [s^-1] with the gas density of the cell times ``factor`` [1], all else unchanged."""
+    around = balance.around
+    if around.gas_density_cm3 is None:
+        return balance.decays
+    thinner = replace(around, gas_density_cm3=factor * around.gas_density_cm3)
+    return orientation_decay(ground_processes(balance.atom, balance.isotope, thinner), balance.isotope.nuclear_spin)
+
+
+def _crossover_factor(balance: GroundBalance) -> float | None:
+    """Factor of the gas density at which wall and transit relax as much as the gas does; None if they never meet."""
+    if balance.around.gas is None:
+        return None
+    from scipy.optimize import brentq
+
+    def gap(log_factor: float) -> float:
+        known = {p.name: _rate(p) for p in decays_at(balance, math.exp(log_factor)) if p.destroys}
+        walls = sum(known.get(name, 0.0) for name in (WALL, TRANSIT))
+        gas = sum(known.get(name, 0.0) for name in _OF_THE_GAS)
+        return math.log(walls / gas) if walls > 0 and gas > 0 else math.nan
+
+    span = math.log(_REACH)
+    if not gap(-span) > 0 > gap(span):
+        return None
+    return math.exp(brentq(gap, -span, span, xtol=1e-6))
