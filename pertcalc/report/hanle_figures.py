@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from pertcalc.report.curve_figures import BLACK, BLUE, RC, SKY, VERMILION, figure_format, write_figure
+from pertcalc.report.tables import number
 from pertcalc.vapour.hanle import GroundHanle, HanleCurves
 
 if TYPE_CHECKING:
@@ -91,13 +92,13 @@ def _mark_fields(axes: Axes, curves: HanleCurves) -> None:
     """Upright lines at the Hanle fields with g_J and with g_F of the stretched F of the most abundant isotope."""
     rank = max(one.rank for one in curves.fields if one.F is None and one.rank <= 2)
     electronic = next(one for one in curves.fields if one.F is None and one.rank == rank)
-    label = f"{electronic.level} with $g_J$: $B_H$ = {electronic.field_G:.2g} G"
+    label = f"{electronic.level} with $g_J$: $B_H$ = {number(electronic.field_G, 2)} G"
     axes.axvline(electronic.field_G, color=_GREY, linewidth=1.0, linestyle=(0, (3, 3)), zorder=1, label=label)
     first = max(curves.weights, key=lambda isotope: curves.weights[isotope])
     stretched = max(
         (one for one in curves.fields if one.isotope == first and one.rank == rank), key=lambda one: one.F or 0
     )
-    label = f"{first}, F = {stretched.F:g}, with $g_F$: $B_H$ = {stretched.field_G:.2g} G"
+    label = f"{first}, F = {stretched.F:g}, with $g_F$: $B_H$ = {number(stretched.field_G, 2)} G"
     axes.axvline(stretched.field_G, color=_GREY, linewidth=1.2, linestyle=(0, (8, 2, 1, 2)), zorder=1, label=label)
 
 
@@ -108,7 +109,7 @@ def _draw_degree(axes: Axes, curves: HanleCurves) -> None:
     axes.set_ylim(-0.04 * full, full)
     _mark_fields(axes, curves)
     axes.set_ylabel("degree of linear\npolarisation P  [%]")
-    axes.legend(loc="upper left", framealpha=1.0, fontsize=9)
+    axes.legend(loc="lower left", framealpha=1.0, fontsize=9)
 
 
 def _draw_angle(axes: Axes, curves: HanleCurves) -> None:
@@ -133,7 +134,7 @@ def _draw_ground(axes: Axes, ground: GroundHanle) -> None:
     by = f" ({ground.damped_by})" if ground.damped_by else ""
     words = (
         f"{ground.isotope}, B across the pumping beam\n$g_F$ = {ground.field.g:.3f}, "
-        f"damping {ground.field.decay:.4g} s$^{{-1}}${by}\n$B_H$ = {ground.field.field_G:.2g} G"
+        f"damping {ground.field.decay:.4g} s$^{{-1}}${by}\n$B_H$ = {number(ground.field.field_G, 2)} G"
     )
     axes.text(0.98, 0.93, words, transform=axes.transAxes, ha="right", va="top", fontsize=9)
     axes.axvline(ground.field.field_G, color=_GREY, linewidth=0.9, linestyle=(0, (3, 3)), zorder=1)

@@ -75,9 +75,10 @@ def ground_sentence(ground: GroundBalance) -> str:
     else:
         first = top.name if len(ground.comparable) == 1 else " and ".join(ground.comparable)
         verb = "relaxes" if len(ground.comparable) == 1 else "relax"
+        known = "of the known processes " if ground.unknown else ""
         parts = [
-            f"S1/2: {first} {verb} the orientation most ({number(top.rate.value, 2)} of {number(total.value, 2)} s^-1, "
-            f"lifetime {number(1 / total.value, 2)} s)"
+            f"S1/2: {known}{first} {verb} the orientation most ({number(top.rate.value, 2)} of "
+            f"{number(total.value, 2)} s^-1, lifetime {number(1 / total.value, 2)} s)"
         ]
     if ground.unknown:
         parts.append(f"unknown: {', '.join(ground.unknown)}")
