@@ -11,6 +11,7 @@ import pytest
 from click.testing import CliRunner
 
 import pertcalc.rates
+import pertcalc.vapour.verdict
 from pertcalc.cli import cli
 from tests.report_fakes import fake_rates
 
@@ -61,6 +62,7 @@ def test_commands_shown_run(words, monkeypatch, tmp_path):
 
     monkeypatch.chdir(tmp_path)
     monkeypatch.setattr(pertcalc.rates, "collision_rates", fake_rates)
+    monkeypatch.setattr(pertcalc.vapour.verdict, "collision_rates", fake_rates)
     arguments = [word for word in shlex.split(words)[1:] if word != "COMMAND"]
     result = CliRunner().invoke(cli, arguments, prog_name="pertcalc")
     # Invented rates break detailed balance: `validate` must see that, whatever else it finds.
