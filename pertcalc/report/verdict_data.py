@@ -9,7 +9,7 @@ from typing import Any
 from pertcalc.report.rows import as_csv
 from pertcalc.report.verdict_words import sentences
 from pertcalc.report.words import CAUTIONS
-from pertcalc.species import UPPER_LEVEL, Sourced
+from pertcalc.species import COMPUTED, UPPER_LEVEL, Sourced
 from pertcalc.vapour.excited import ModelRates, RankBalance
 from pertcalc.vapour.fill import DEFAULTS_ORIGIN
 from pertcalc.vapour.ground import GroundProcess
@@ -126,6 +126,7 @@ def _ground(ground: GroundBalance) -> dict[str, Any]:
         "factor": _finite(ground.factor),
         "strongest_relaxation": None if ground.strongest is None else ground.strongest.name,
         "crossover_pressure_Torr": ground.crossover_pressure_torr,
+        "crossover_pressure_error_relative": ground.crossover_pressure_error,
         "crossover_field_G": ground.crossover_field_G,
     }
 
@@ -214,7 +215,7 @@ def _sourced(value: Sourced | None) -> dict[str, Any] | None:
 
 
 def verdict_csv(found: Verdict) -> str:
-    """One row per line: Gamma_R, Gamma_I, Gamma_E, D1, D2 (and D3) [s^-1] with relative errors and the conditions."""
+    """One row per line: Gamma_R, Gamma_I, Gamma_E, D1, D2 (and D3) in ``unit`` s^-1, relative errors, conditions."""
     return as_csv(_model_row(found, one) for one in found.models.values())
 
 
@@ -227,9 +228,11 @@ def _model_row(found: Verdict, one: ModelRates) -> dict[str, Any]:
     return (
         {"alkali": question.alkali, "noble_gas": question.gas or "none", "line": one.line}
         | {"upper_level": UPPER_LEVEL[one.line]}
-        | {f"{name}_s": value for name, value in values.items()}
+        | values
+        | {"unit": "s^-1"}
         | {f"{name}_error_relative": error for name, error in errors.items()}
         | {"W2": found.scattering[one.line].W2.value, "W2_error": found.scattering[one.line].W2.error}
         | {"temperature_K": fill.temperature_K, "gas_density_cm3": question.gas_density_cm3, "field_G": fill.field_G}
-        | {"method": question.method, "mark": "COMPUTED", "version": found.version}
+        | {"method": None if found.rates is None else question.method, "mark": COMPUTED}
+        | {"Gamma_R_mark": found.balances[UPPER_LEVEL[one.line]][1].radiative.mark, "version": found.version}
     )

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import re
+
 from pertcalc.report.report_text import Citations
 from pertcalc.report.tables import UNKNOWN, WIDTH, number, percent, table, wrapped
 from pertcalc.report.verdict_words import READING, VISIBLE, mixing_sentence, sentences
@@ -22,7 +24,7 @@ def verdict_text(found: Verdict) -> str:
     lines += ["", _title("What rules each level")]
     for sentence in sentences(found).values():
         lines += wrapped(sentence, "    ", "  ")
-    lines += ["", *_excited(found)]
+    lines += ["", *_excited(found, cite)]
     lines += ["", *_ground(found, cite)]
     lines += ["", *_scattering(found)]
     lines += ["", *_light(found)]
@@ -89,16 +91,23 @@ def _value(value: Sourced | None, unit: str = "") -> str:
     return f"{number(value.value, 3)} +- {error} {unit}".rstrip()
 
 
-def _excited(found: Verdict) -> list[str]:
+def _narrow(cells: list[str]) -> list[str]:
+    """Cells of a wide table with 3.61e7 for 3.61e+07."""
+    return [re.sub(r"e([+-])0*(\d)", lambda m: f"e{m[1].strip('+')}{m[2]}", cell) for cell in cells]
+
+
+def _excited(found: Verdict, cite: Citations) -> list[str]:
     headers = ["level", "K", "decay\ns^-1", "collisions\ns^-1", "Larmor\nrad/s", "Hanle field, G\nfree -> here",
-               "who wins,\nby a factor", "crossover\nTorr", "crossover\nG"]  # fmt: skip
+               "who wins,\nby a factor", "cross at\nTorr", "cross at\nG"]  # fmt: skip
     rows = [
-        _rank_row(balance, K == VISIBLE[level])
+        _narrow(_rank_row(balance, K == VISIBLE[level]))
         for level, ranks in found.balances.items()
         for K, balance in ranks.items()
     ]
     lines = [_title("Excited levels: every rank"), *table(headers, rows)]
     for level, where in found.regimes.items():
+        decay = found.balances[level][VISIBLE[level]].radiative
+        lines += wrapped(f"{level}: radiative decay {_value(decay, 's^-1')} {cite(_origin(decay))}.", "    ", "  ")
         balance = found.balances[level][VISIBLE[level]]
         words = {
             "g_J": f"rank K is electronic, with g_J = {_g(found, level)}",
@@ -227,6 +236,6 @@ def _models(found: Verdict) -> list[str]:
         for K in (1, 2, 3):
             D = one.depolarising.get(K)
             row.append(UNKNOWN if D is None else f"{number(D, 3)} +- {percent(one.errors.get(f'D{K}'))}" if D else "0")
-        rows.append(row)
+        rows.append(_narrow(row))
     headers = ["line", "Gamma_R", "Gamma_I", "Gamma_E", "D1", "D2", "D3"]
     return [_title("For a model of polarised lines, s^-1 (COMPUTED; --csv has them)"), *table(headers, rows)]

@@ -73,13 +73,13 @@ def ground_sentence(ground: GroundBalance) -> str:
     if top is None or top.rate is None or total is None:
         parts = ["S1/2: no relaxation rate of the orientation is known here"]
     else:
-        first = top.name if len(ground.comparable) == 1 else " and ".join(ground.comparable)
-        verb = "relaxes" if len(ground.comparable) == 1 else "relax"
         known = "of the known processes " if ground.unknown else ""
-        parts = [
-            f"S1/2: {known}{first} {verb} the orientation most ({number(top.rate.value, 2)} of "
-            f"{number(total.value, 2)} s^-1, lifetime {number(1 / total.value, 2)} s)"
-        ]
+        sizes = f"{number(top.rate.value, 2)} of {number(total.value, 2)} s^-1, lifetime {number(1 / total.value, 2)} s"
+        if len(ground.comparable) == 1:
+            parts = [f"S1/2: {known}{top.name} relaxes the orientation most ({sizes})"]
+        else:
+            several = " and ".join(ground.comparable)
+            parts = [f"S1/2: {known}{several} weigh about equally on the orientation (largest {top.name}, {sizes})"]
     if ground.unknown:
         parts.append(f"unknown: {', '.join(ground.unknown)}")
     if ground.pumping is not None and total is not None:
@@ -87,8 +87,8 @@ def ground_sentence(ground: GroundBalance) -> str:
     if (field := ground.crossover_field_G) is not None:
         here = "as here" if ground.dominant == FIELD else "not reached here"
         parts.append(f"a field across it above {number(field, 2)} G ({here}) turns it away first")
-    if ground.crossover_pressure_torr is not None:
-        parts.append(f"walls and gas relax it equally at {number(ground.crossover_pressure_torr, 3)} Torr")
+    if (meet := ground.crossover_pressure_torr) is not None:
+        parts.append(f"walls and gas relax it equally at {_with_error(meet, ground.crossover_pressure_error)} Torr")
     return "; ".join(parts) + "."
 
 
@@ -105,6 +105,8 @@ def mixing_sentence(mixing: Mixing) -> str:
         "repopulation": "more slowly than it decays",
         "mixed": "about as fast as it decays",
     }[mixing.pumping]
+    if mixing.ratio == 0:
+        against = "not at all"
     error = "" if mixing.error is None else f" +- {number(mixing.error, 2)}"
     photons = ""
     if mixing.photons_per_atom is not None:

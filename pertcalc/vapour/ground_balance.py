@@ -30,6 +30,8 @@ PUMPING = "pumping light"
 _OF_THE_GAS = (BY_GAS, PAIRS)
 # Densities searched for the crossover of walls and gas lie within this factor of that of the cell.
 _REACH = 1e6
+# Step in ln n of the slope there.
+_STEP = 1e-3
 
 
 @dataclass(frozen=True, slots=True)
@@ -41,7 +43,8 @@ class GroundBalance:
     ``unknown`` names of processes without a rate; ``pumping`` rate at which the light damps the orientation [s^-1] or
     None; ``larmor`` [rad/s] of F = I + 1/2; ``exchange`` damping of the precession by spin exchange [s^-1] or None;
     ``hanle`` words for the damping -> Hanle field; ``ranking`` effects and rates, largest first;
-    ``crossover_pressure_torr`` where walls and transit equal the gas, at the fill temperature [Torr], or None.
+    ``crossover_pressure_torr`` where walls and transit equal the gas, at the fill temperature [Torr], or None, with its
+    relative error [1].
     """
 
     atom: Alkali
@@ -59,6 +62,7 @@ class GroundBalance:
     hanle: dict[str, HanleField]
     ranking: tuple[tuple[str, float], ...]
     crossover_pressure_torr: float | None
+    crossover_pressure_error: float | None  # relative [1]
 
     @property
     def dominant(self) -> str:
@@ -164,9 +168,13 @@ def ground_balance(
         hanle,
         tuple(sorted(effects, key=lambda effect: -effect[1])),
         None,
+        None,
     )
-    factor = _crossover_factor(found)
-    return found if factor is None else replace(found, crossover_pressure_torr=factor * question.fill.pressure_torr)
+    factor, error = _crossover(found)
+    if factor is None:
+        return found
+    meet = factor * question.fill.pressure_torr
+    return replace(found, crossover_pressure_torr=meet, crossover_pressure_error=error)
 
 
 def _rate(process: GroundProcess) -> float:
@@ -228,19 +236,28 @@ def decays_at(balance: GroundBalance, factor: float) -> tuple[GroundProcess, ...
     return orientation_decay(ground_processes(balance.atom, balance.isotope, thinner), balance.isotope.nuclear_spin)
 
 
-def _crossover_factor(balance: GroundBalance) -> float | None:
-    """Factor of the gas density at which wall and transit relax as much as the gas does; None if they never meet."""
+def _crossover(balance: GroundBalance) -> tuple[float | None, float | None]:
+    """Factor of the gas density at which wall and transit relax as much as the gas does, and its relative error.
+
+    None if they never meet. The error: those of both sides over the slope d ln(walls/gas)/d ln n.
+    """
     if balance.around.gas is None:
-        return None
+        return None, None
     from scipy.optimize import brentq
 
+    def sides(log_factor: float) -> list[Sourced | None]:
+        known = {p.name: p.rate for p in decays_at(balance, math.exp(log_factor)) if p.destroys and p.rate is not None}
+        return [_sum((known[n] for n in names if n in known), "") for names in ((WALL, TRANSIT), _OF_THE_GAS)]
+
     def gap(log_factor: float) -> float:
-        known = {p.name: _rate(p) for p in decays_at(balance, math.exp(log_factor)) if p.destroys}
-        walls = sum(known.get(name, 0.0) for name in (WALL, TRANSIT))
-        gas = sum(known.get(name, 0.0) for name in _OF_THE_GAS)
+        walls, gas = (0.0 if one is None else one.value for one in sides(log_factor))
         return math.log(walls / gas) if walls > 0 and gas > 0 else math.nan
 
     span = math.log(_REACH)
     if not gap(-span) > 0 > gap(span):
-        return None
-    return math.exp(brentq(gap, -span, span, xtol=1e-6))
+        return None, None
+    root = brentq(gap, -span, span, xtol=1e-9)
+    slope = (gap(root + _STEP) - gap(root - _STEP)) / (2 * _STEP)
+    errors = [None if one is None or one.error is None else one.error / one.value for one in sides(root)]
+    known = [one for one in errors if one is not None]
+    return math.exp(root), math.hypot(*known) / abs(slope) if len(known) == len(errors) else None

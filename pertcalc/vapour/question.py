@@ -11,8 +11,9 @@ from pertcalc.errors import InputError, UnknownNameError
 from pertcalc.names import METHODS
 from pertcalc.rates import load_curves
 from pertcalc.species import UPPER_LEVEL, alkali_symbol, noble_gas_symbol
-from pertcalc.vapour.cell import Cell, depolarisation_per_bounce, parse_cell
+from pertcalc.vapour.cell import Cell, parse_cell
 from pertcalc.vapour.fill import Fill, fill_or_defaults
+from pertcalc.vapour.ground import Surroundings
 from pertcalc.vapour.pumping import Beam
 
 NO_GAS = "none"
@@ -120,9 +121,10 @@ def ask(
             "needs. Take semiclassical or quantum."
         )
     fill, defaults = fill_or_defaults(symbol, temperature_K, pressure_torr, fill_temperature_K, field_G)
-    depolarisation_per_bounce(wall)  # refuses an unknown wall
     light = _light(power_W, beam_diameter_cm, line, detuning_GHz, linewidth_GHz)
     place = cell if isinstance(cell, Cell) else parse_cell(DEFAULT_CELL if cell is None else cell)
+    # Refuses an unknown wall and a beam larger than the cell before the long computation.
+    Surroundings(fill.temperature_K, place, wall, beam_diameter_cm=beam_diameter_cm)
     kept = tuple(one for one in defaults if not (without and one in ("pressure", "fill temperature")))
     kept += ("cell",) if cell is None else ()
     return Question(symbol, name, fill, place, wall, light, beam_diameter_cm, method, curve_set, kept)

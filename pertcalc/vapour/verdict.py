@@ -6,21 +6,22 @@ This module only assembles: every rate comes from a room of its own. notes/verdi
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from pertcalc import __version__
 from pertcalc.rates import collision_rates
 from pertcalc.results import CollisionRates
 from pertcalc.species import COMPUTED, SPECIES_GASES, UPPER_LEVEL, Alkali, Isotope, Sourced, alkali
 from pertcalc.vapour.absorption import AbsorptionLine, absorption_line
+from pertcalc.vapour.cell import coating_warning
 from pertcalc.vapour.density import VapourDensity, alkali_density
 from pertcalc.vapour.diffusion import Diffusion, diffusion
 from pertcalc.vapour.excited import ModelRates, RankBalance, coefficient_error, model_rates, rank_balance
-from pertcalc.vapour.fill import IMPACT_LIMIT, impact_parameter
+from pertcalc.vapour.fill import IMPACT_LIMIT, hanle_field_G, impact_parameter
 from pertcalc.vapour.ground_balance import GroundBalance, ground_balance
 from pertcalc.vapour.ground_spin import slowing_down
 from pertcalc.vapour.hanle import GroundHanle, HanleCurves, field_grid, ground_hanle, hanle_curves
-from pertcalc.vapour.hanle_fields import HanleField, Regime, field_limits, hanle_fields, regime
+from pertcalc.vapour.hanle_fields import CLEAR, HanleField, Regime, field_limits, hanle_fields, regime
 from pertcalc.vapour.level_rates import J_OF, P_LEVELS, LevelRates, free_rates, level_rates
 from pertcalc.vapour.pairs import sticking
 from pertcalc.vapour.pumping import Pumping, pumping, pumping_kind, spin_coefficients, surviving_orientation
@@ -197,8 +198,8 @@ def _balances(
     found: dict[str, dict[int, RankBalance]] = {}
     for level in P_LEVELS:
         g, words = _g_in_force(atom, isotope, regimes[level])
-        found[level] = {
-            K: rank_balance(
+        ranks = (
+            rank_balance(
                 atom,
                 level,
                 K,
@@ -210,8 +211,31 @@ def _balances(
                 rates is not None,
             )
             for K in range(1, round(2 * J_OF[level]) + 1)
+        )
+        found[level] = {
+            one.rank: replace(one, crossover_field_G=_crossover_field_G(atom, isotope, regimes[level], one))
+            for one in ranks
         }
     return found
+
+
+def _crossover_field_G(atom: Alkali, isotope: Isotope, here: Regime, balance: RankBalance) -> float:
+    """Field at which the Larmor frequency, with the g in force there, reaches the larger of decay and collisions [G].
+
+    g only grows with the field, from g_F to g_J where the nucleus is decoupled; a rate that lies between both Larmor
+    frequencies there is passed at that step.
+    """
+
+    def g_in(field_G: float) -> float:
+        return _g_in_force(atom, isotope, regime(isotope, here.level, here.width, field_G))[0]
+
+    rate = max(balance.radiative.value, balance.collisional.value)
+    weak, g_J = g_in(0.0), atom.levels[here.level].gJ.value
+    if g_in(field := hanle_field_G(weak, rate)) == weak:
+        return field
+    if g_in(field := hanle_field_G(g_J, rate)) == g_J:
+        return field
+    return hanle_field_G(g_J, CLEAR * here.largest)
 
 
 def _mixing(line: str, isotope: Isotope, electronic: LevelRates, rates: CollisionRates | None) -> Mixing:
@@ -341,6 +365,8 @@ def _warnings(
     found += [warning for one in trapped.values() for warning in one.warnings]
     if beam is not None:
         found += beam.warnings
+    if coating := coating_warning(question.wall, question.fill.temperature_K):
+        found.append(coating)
     return tuple(dict.fromkeys(found))
 
 
