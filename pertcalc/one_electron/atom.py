@@ -45,11 +45,13 @@ class Atom:
         Raises InputError for an l that is not in the set or an n below the lowest valence state.
         """
         if not 0 <= l <= self.l_max:
-            raise InputError(f"l = {l}: the set of {self.symbol} has l = 0 .. {self.l_max}; build it with a higher l_max")
+            raise InputError(
+                f"l = {l}: the set of {self.symbol} has l = 0 .. {self.l_max}; build it with a higher l_max"
+            )
         position = n - self.core.principal(l)
         if not 0 <= position < len(self.energies[l]):
             lowest = f"{self.core.principal(l)}{LETTERS[l]}"
-            raise InputError(f"n = {n}: the lowest valence state of {self.symbol} with this l is {lowest}")
+            raise InputError(f"n = {n}: the lowest valence state of {self.symbol} with this l is {lowest}.")
         return position
 
     @property

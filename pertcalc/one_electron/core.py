@@ -1,59 +1,26 @@
-"""The alkali core as seen by the valence electron: an l-dependent potential fitted to the two lowest terms of s, p, d.
+"""The alkali core as seen by the valence electron: an l-dependent potential with core polarisation.
 
 ``V_l(r) = -1/r - a_c/(2 r^4) [1 - exp(-(r/r_c)^6)] + A_l exp(-b_l r^2)``, A_l = 0 for l above the fitted ones. The
-lowest state of each l is the lowest valence state: closed shells are replaced by the repulsion. Term energies are in
-data/one_electron/terms.csv, fitted potentials in core_potentials.toml (notes/scripts/make_core_potentials.py).
+lowest state of each l is the lowest valence state: closed shells are replaced by the repulsion. The shipped potentials
+(data/one_electron/core_potentials.toml, made by notes/scripts/make_core_potentials.py) come from core_fit.py.
 """
 
 from __future__ import annotations
 
-import csv
-import math
 import tomllib
-from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from functools import cache
 from importlib.resources import files
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.linalg import eigh
-from scipy.optimize import brentq
 
-from pertcalc.constants import HARTREE_CM1
-from pertcalc.errors import DataFileError, InputError, NotConvergedError
-from pertcalc.one_electron.radial_basis import RadialBasis, bspline_basis
+from pertcalc.errors import DataFileError
 from pertcalc.species import alkali_symbol
 
 Array = NDArray[np.float64]
 
 LETTERS = "spdfghiklmno"
-FITTED_L = 3
-TERM_TOLERANCE_CM1 = 0.05
-# Range searched for b_l [bohr^-2]: widths of 0.25 to 5 bohr.
-EXPONENTS = (0.04, 16.0)
-# Strongest core repulsion or attraction tried [hartree]; beyond it the wall no longer moves the energies.
-STRENGTH_LIMIT = 1e5
-
-
-@dataclass(frozen=True, slots=True)
-class Term:
-    """Fine-structure averaged energy of a valence state.
-
-    ``n``, ``l`` its quantum numbers; ``energy_cm1`` above the ground level [cm^-1]; ``source``, ``mark`` "READ" |
-    "FROM MEMORY".
-    """
-
-    n: int
-    l: int
-    energy_cm1: float
-    source: str = ""
-    mark: str = ""
-
-    @property
-    def label(self) -> str:
-        """Name of the state, as "5s"."""
-        return f"{self.n}{LETTERS[self.l]}"
 
 
 @dataclass(frozen=True, slots=True)
@@ -62,7 +29,8 @@ class CorePotential:
 
     ``symbol``; ``core_polarizability`` a_c [bohr^3]; ``cutoff`` r_c [bohr]; ``strengths`` A_l [hartree] and
     ``exponents`` b_l [bohr^-2] for l = 0, 1, ..., no short-range term beyond; ``lowest_n`` principal quantum number
-    of the lowest valence state of each l, l + 1 beyond; ``source`` and ``mark`` of the numbers.
+    of the lowest valence state of each l, l + 1 beyond; ``core_quadrupole`` quadrupole polarisability of the core
+    [bohr^5], None if unknown (only the dispersion coefficients use it); ``source`` and ``mark`` of the numbers.
     """
 
     symbol: str
@@ -71,6 +39,7 @@ class CorePotential:
     strengths: tuple[float, ...]
     exponents: tuple[float, ...]
     lowest_n: tuple[int, ...]
+    core_quadrupole: float | None = None
     source: str = ""
     mark: str = ""
 
@@ -116,25 +85,12 @@ class CorePotential:
         return self.lowest_n[l] if l < len(self.lowest_n) else l + 1
 
 
-HYDROGEN = CorePotential("H", 0.0, 1.0, (), (), (), "bare Coulomb potential", "exact")
+HYDROGEN = CorePotential("H", 0.0, 1.0, (), (), (), 0.0, "bare Coulomb potential", "exact")
 
 
 def core_potential(symbol: str) -> CorePotential:
     """Return the shipped potential of an alkali core; UnknownNameError for another symbol."""
     return _shipped()[alkali_symbol(symbol)]
-
-
-def valence_terms(symbol: str) -> tuple[Term, ...]:
-    """Return the term energies of an alkali [cm^-1 above the ground level], fine-structure averaged.
-
-    Levels are weighted with 2J + 1. UnknownNameError for an atom that is not one of the five alkalis.
-    """
-    return _terms()[alkali_symbol(symbol)]
-
-
-def ionisation_energy(symbol: str) -> float:
-    """Return the ionisation energy of an alkali [cm^-1] that belongs to its term energies."""
-    return _ionisation()[alkali_symbol(symbol)]
 
 
 @cache
@@ -150,6 +106,7 @@ def _shipped() -> dict[str, CorePotential]:
                 tuple(map(float, entry["strength_hartree"])),
                 tuple(map(float, entry["exponent_per_bohr2"])),
                 tuple(map(int, entry["lowest_n"])),
+                float(entry["core_quadrupole_au"]),
                 entry["source"],
                 entry["mark"],
             )

@@ -19,9 +19,9 @@ from pertcalc.errors import InputError
 
 Array = NDArray[np.float64]
 
-SIZE, R_MAX, DEGREE = 44, 100.0, 8
+SIZE, R_MAX, DEGREE = 50, 80.0, 8
 # Knots are even in ln(1 + r/NEAR) + r/FAR: they crowd at the core and end up equidistant.
-NEAR, FAR = 0.3, 12.0
+NEAR, FAR = 2.0, 50.0
 SMALLEST_SIZE = 12
 
 
