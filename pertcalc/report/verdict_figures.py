@@ -21,7 +21,7 @@ from pertcalc.species import Sourced
 from pertcalc.vapour.excited import DECAY, FIELD, RankBalance
 from pertcalc.vapour.fill import IMPACT_LIMIT
 from pertcalc.vapour.ground import TRANSIT, WALL, GroundProcess, exchange_is_fast, ground_processes
-from pertcalc.vapour.ground_balance import PUMPING, GroundBalance, decays_at
+from pertcalc.vapour.ground_balance import PUMPING, GroundBalance, decays_at, light_decay
 from pertcalc.vapour.level_rates import level_rates
 from pertcalc.vapour.pairs import PAIRS
 from pertcalc.vapour.pumping import pumping
@@ -174,7 +174,7 @@ def ground_lines(found: Verdict, low: float, high: float) -> GroundLines:
 
 
 def pumping_at(found: Verdict, factor: float) -> float:
-    """Rate at which the light damps the orientation [s^-1], the gas density of the cell times ``factor`` [1].
+    """Decay of <F_z> by absorption of the light [s^-1], the gas density of the cell times ``factor`` [1].
 
     Width, shift and mixing of the excited level change with the density; a beam at the peak stays at the peak.
     """
@@ -183,7 +183,8 @@ def pumping_at(found: Verdict, factor: float) -> float:
     line = found.lines[light.line]
     moved = replace(line, fwhm_rad_s=factor * line.fwhm_rad_s, shift_rad_s=factor * line.shift_rad_s)
     electronic = level_rates(found.ground.atom, gas, factor * found.question.gas_density_cm3)
-    return float(pumping(moved, light.beam, electronic, slowing_down=beam.spin.slowing_down).spin.damping)
+    there = pumping(moved, light.beam, electronic, slowing_down=beam.spin.slowing_down)
+    return light_decay(there, found.isotope, _forms(found.ground, factor)[0]).value
 
 
 def _rate(process: GroundProcess) -> float:
@@ -312,7 +313,7 @@ def _draw_ground(axes: Axes, found: Verdict, lines: GroundLines) -> None:
     if ground.total is not None:
         words[SUM] = f"{'sum of the known' if ground.unknown else SUM}, {_origin(ground.total)}"
     if ground.pumping is not None:
-        words[PUMPING] = f"{PUMPING}, on the electron spin, {_origin(ground.pumping)}"
+        words[PUMPING] = f"{PUMPING}, {_origin(ground.pumping)}"
     words |= {name: name for name in (WALLS, GAS)}
     drawn = [name for name in _GROUND if name in words and np.any(lines.rates.get(name, np.zeros(1)) > 0)]
     x = lines.pressures

@@ -16,6 +16,7 @@ from pertcalc.vapour.ground import (
     Surroundings,
     exchange_is_fast,
     ground_processes,
+    observable,
     orientation_decay,
 )
 from pertcalc.vapour.ground_spin import exchange_broadening
@@ -40,7 +41,7 @@ class GroundBalance:
 
     ``around`` what it is surrounded by; ``processes`` as they act and ``decays`` as decay rates of <F_z> [s^-1];
     ``fast_exchange`` whether a spin temperature holds; ``total`` sum of the known decays [s^-1], None if none is known;
-    ``unknown`` names of processes without a rate; ``pumping`` rate at which the light damps the orientation [s^-1] or
+    ``unknown`` names of processes without a rate; ``pumping`` decay of <F_z> by absorption of the light [s^-1] or
     None; ``larmor`` [rad/s] of F = I + 1/2; ``exchange`` damping of the precession by spin exchange [s^-1] or None;
     ``hanle`` words for the damping -> Hanle field; ``ranking`` effects and rates, largest first;
     ``crossover_pressure_torr`` where walls and transit equal the gas, at the fill temperature [Torr], or None, with its
@@ -142,9 +143,8 @@ def ground_balance(
     processes = ground_processes(atom, isotope, around)
     decays = orientation_decay(processes, isotope.nuclear_spin)
     total = _total(decays)
-    light = None if beam is None else Sourced(
-        beam.spin.damping, "s^-1", "absorption of the pumping light", COMPUTED, _scaled(beam.rate, beam.spin.damping)
-    )  # fmt: skip
+    fast = exchange_is_fast(processes)
+    light = None if beam is None else light_decay(beam, isotope, fast)
     hanle = _hanle(isotope, total, light, exchange := _exchange(processes, isotope))
     one_gauss = ground_hanle_field(isotope, 1.0)
     effects = [(p.name, _rate(p)) for p in decays if p.destroys and p.rate is not None]
@@ -158,7 +158,7 @@ def ground_balance(
         around,
         processes,
         decays,
-        exchange_is_fast(processes),
+        fast,
         total,
         tuple(p.name for p in decays if p.destroys and p.rate is None),
         light,
@@ -175,6 +175,15 @@ def ground_balance(
         return found
     meet = factor * question.fill.pressure_torr
     return replace(found, crossover_pressure_torr=meet, crossover_pressure_error=error)
+
+
+def light_decay(beam: Pumping, isotope: Isotope, fast_exchange: bool) -> Sourced:
+    """Rate at which absorption takes <F_z> away [s^-1]: the damping of the electron spin, slowed by the nucleus.
+
+    Absorption and the mixing of a short-lived level leave the nucleus alone, like a collision: see `ground.observable`.
+    """
+    damping = observable(beam.spin.damping, isotope.nuclear_spin, fast_exchange)
+    return Sourced(damping, "s^-1", "absorption of the pumping light", COMPUTED, _scaled(beam.rate, damping))
 
 
 def _rate(process: GroundProcess) -> float:
