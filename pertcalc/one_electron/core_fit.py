@@ -163,24 +163,26 @@ class _ShortRange:
             exponent = brentq(lambda b: self.strength_and_miss(b)[1], low, high, xtol=1e-12)
             return self.strength_and_miss(exponent)[0], exponent
         if np.isnan(misses).all():
-            raise self._failure(math.nan)
+            first = self.pair[0]
+            raise InputError(
+                f"core potential of {self.symbol}: no core repulsion lifts the lowest level with l = {first.l} to "
+                f"{first.label} = {first.energy_cm1:g} cm^-1; check this term and the ionisation energy."
+            )
         best = int(np.nanargmin(np.abs(misses)))
         if abs(misses[best]) * HARTREE_CM1 > TOLERANCE_CM1:
             raise self._failure(misses[best])
         return self.strength_and_miss(EXPONENTS[best])[0], float(EXPONENTS[best])
 
     def _failure(self, miss: float) -> NotConvergedError:
-        """Error that names both terms; `miss` [hartree] of the second term, nan if the first cannot be met."""
+        """Error that names both terms; `miss` [hartree] of the second term with the first exact."""
         first, second = self.pair
-        term = first if math.isnan(miss) else second
         asked = f"{first.label} = {first.energy_cm1:g} and {second.label} = {second.energy_cm1:g} cm^-1"
-        nearest = term.energy_cm1 + miss * HARTREE_CM1
         return NotConvergedError(
             f"core potential of {self.symbol}: no core gives {asked} together (check both terms, the ionisation "
-            f"energy, core_polarizability and cutoff); {term.label} [cm^-1]",
-            nearest,
-            abs(miss * HARTREE_CM1) / abs(term.energy_cm1 or 1.0),
-            TOLERANCE_CM1 / abs(term.energy_cm1 or 1.0),
+            f"energy, core_polarizability and cutoff); {second.label} [cm^-1]",
+            second.energy_cm1 + miss * HARTREE_CM1,
+            abs(miss) * HARTREE_CM1 / second.energy_cm1,
+            TOLERANCE_CM1 / second.energy_cm1,
         )
 
 
