@@ -39,8 +39,8 @@ def main() -> None:
 core_polarizability_au = {polarizability}
 core_quadrupole_au = {QUADRUPOLES[symbol]}
 cutoff_bohr = {CUTOFFS[symbol]}
-strength_hartree = [{", ".join(f"{a:.8f}" for a in core.strengths)}]
-exponent_per_bohr2 = [{", ".join(f"{b:.9f}" for b in core.exponents)}]
+strength_hartree = [{", ".join(f"{a:.7f}" for a in core.strengths)}]
+exponent_per_bohr2 = [{", ".join(f"{b:.5f}" for b in core.exponents)}]
 lowest_n = {list(core.lowest_n)}
 source = "{core.source} (terms.csv, FROM MEMORY)"
 mark = "{core.mark}"

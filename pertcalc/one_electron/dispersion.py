@@ -86,7 +86,7 @@ def gas_oscillators(gas: NobleGas) -> Oscillators:
 
     The strengths follow from the polarisabilities; the dipole and quadrupole frequencies from C6 and C8 of the like
     pair, ``C6 = (3/4) alpha_1^2 w_1``, ``C8 = (15/2) alpha_1 alpha_2 w_1 w_2/(w_1 + w_2)``. No C10 fixes the octupole
-    one: it is set to that of the quadrupole. An alkali's frequencies are so low that 20 % of it is at most 0.6 % of C10.
+    one: it is set to that of the quadrupole. An alkali's own are so low that 20 % of it is at most 0.6 % of C10.
     """
     alphas = [
         float(a) for a in (gas.polarizability_au, gas.quadrupole_polarizability_au, gas.octupole_polarizability_au)
