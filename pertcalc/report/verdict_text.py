@@ -150,9 +150,10 @@ def _ground(found: Verdict, cite: Citations) -> list[str]:
     rows.append(["sum of the known", "", _value(ground.total), "" if ground.total is None else ground.total.mark, ""])
     if ground.pumping is not None:
         rows.append(["pumping light", "", _value(ground.pumping), ground.pumping.mark, ""])
-    rows.append(["field, F = I + 1/2", "", f"{number(ground.larmor, 3)} rad/s", "", f"g_F = {number(ground.g_F, 4)}"])
+    words = f"field (F={ground.isotope.nuclear_spin + 0.5:g}, g_F={number(ground.g_F, 4)})"
+    rows.append([words, "", f"{number(ground.larmor, 3)} rad/s", "", ""])
     headers = ["process", "rate\ns^-1", "decay of <F_z>\ns^-1", "mark", "source"]
-    lines = [_title(f"Ground level S1/2 of {ground.isotope.label}"), *table(headers, rows)]
+    lines = [_title(f"Ground level S1/2 of {ground.isotope.label}"), *table(headers, [*map(_narrow, rows)])]
     lines += [
         line for p in ground.processes if p.rate is None for line in wrapped(f"{p.name}: {p.reason}", "    ", "  ")
     ]
@@ -179,13 +180,16 @@ def _process_row(acts: GroundProcess, decays: GroundProcess, cite: Citations) ->
 
 
 def _scattering(found: Verdict) -> list[str]:
-    rows = []
+    rows, parts = [], []
     for line, one in found.scattering.items():
-        parts = ", ".join(f"{label} {number(W2, 3)}" for label, W2 in one.by_isotope.items())
         W2 = number(one.W2.value, 3) + (f" +- {number(one.W2.error, 2)}" if one.W2.error else "")
-        rows.append([line, W2, number(one.unpolarised, 3), number(one.linear, 3), number(one.electronic, 3), parts])
-    headers = ["line", "W2", "P at 90 deg\nunpolarised", "p at 90 deg\nlinear", "W2 without\nnuclear spin", "isotopes"]
-    return [_title("Scattered light at zero field, natural mixture (COMPUTED)"), *table(headers, rows)]
+        rows.append([line, W2, number(one.unpolarised, 3), number(one.linear, 3), number(one.electronic, 3)])
+        if len(one.by_isotope) > 1 and one.electronic:
+            values = ", ".join(f"{label} {number(W2, 3)}" for label, W2 in one.by_isotope.items())
+            parts += wrapped(f"W2 of {line} by isotope: {values}.", "    ", "  ")
+    headers = ["line", "W2", "P at 90 deg\nunpolarised", "p at 90 deg\nlinear", "W2 without\nnuclear spin"]
+    title = _title("Scattered light at zero field, natural mixture (COMPUTED)")
+    return [title, *table(headers, [*map(_narrow, rows)]), *parts]
 
 
 def _light(found: Verdict) -> list[str]:
