@@ -244,6 +244,14 @@ def test_a_vapour_without_gas_is_not_mixed():
     assert "Torr" not in text.split("How to read")[0].split("== Excited")[0]
 
 
+def test_mixing_is_called_fast_by_its_ratio_to_the_decay():
+    """Invented K + Ar: 4.4 times the decay, about equal, and a tenth; the kind of pumping is mixed in all three."""
+    for pressure, said in ((29.0, "faster than"), (6.6, "about as fast as"), (1.0, "more slowly than")):
+        mixing = verdict(ask("K", "Ar", pressure_torr=pressure)).mixing["D1"]
+        assert mixing.pumping == "mixed"
+        assert f"collisions mix P1/2 {said} it decays" in verdict_words.mixing_sentence(mixing)
+
+
 def test_processes_of_one_size_are_said_to_be_equal():
     found = verdict(ask("Cs", "Ar", pressure_torr=100.0))
     assert found.ground.comparable == ("wall", "spin destruction by gas")

@@ -100,13 +100,12 @@ def sentences(found: Verdict) -> dict[str, str]:
 
 def mixing_sentence(mixing: Mixing) -> str:
     """Whether collisions mix the upper level of a line before it decays, and what pumping on the line then is."""
-    against = {
-        "depopulation": "faster than it decays",
-        "repopulation": "more slowly than it decays",
-        "mixed": "about as fast as it decays",
-    }[mixing.pumping]
     if mixing.ratio == 0:
         against = "not at all"
+    elif max(mixing.ratio, 1 / mixing.ratio) <= COMPARABLE:
+        against = "about as fast as it decays"
+    else:
+        against = "faster than it decays" if mixing.ratio > 1 else "more slowly than it decays"
     error = "" if mixing.error is None else f" +- {number(mixing.error, 2)}"
     photons = ""
     if mixing.photons_per_atom is not None:
