@@ -10,6 +10,7 @@ from typing import Any
 import click
 
 from pertcalc import __version__
+from pertcalc.cli_curves import curves
 from pertcalc.cli_molecule import molecule
 from pertcalc.cli_options import (
     INTERRUPTED,
@@ -30,7 +31,7 @@ from pertcalc.cli_options import (
     result_options,
 )
 from pertcalc.cli_verdict import verdict
-from pertcalc.errors import InputError, PertcalcError
+from pertcalc.errors import PertcalcError
 
 
 class Friendly(click.Group):
@@ -203,52 +204,7 @@ def rates(
     deliver(text, output, force)
 
 
-@cli.command(short_help="The pair curves: list, details, plot, check of a file.")
-@click.argument("alkali", type=Species("alkali"), required=False)
-@click.argument("gas", type=AnyGas("noble gas"), required=False)
-@click.option("--curves", "curve_file", metavar="FILE", help="Show this curve file instead of a default set.")
-@click.option("--plot", metavar="FILE", help="Draw one pair: FILE ends in .png or .svg.")
-@click.option("--check", "check_file", metavar="FILE", help="Report every problem of a curve file (exit 1 if any).")
-@result_options
-def curves(
-    alkali: str | None,
-    gas: str | None,
-    curve_file: str | None,
-    plot: str | None,
-    check_file: str | None,
-    as_json: bool,
-    as_csv: bool,
-    output: str | None,
-    force: bool,
-) -> None:
-    """The pair curves: all of them, those of ALKALI, or one pair in detail.
-
-    The list shows well depth De and position Re, C6 and the mark of the source. A plot shows V(R) of X, A1/2, A3/2 and
-    B1/2 and the differences that shape the D lines.
-
-    \b
-    Examples:
-        pertcalc curves
-        pertcalc curves Rb Ar --plot rb-ar.png
-        pertcalc curves --check my-curves.toml
-    """
-    one_format(as_json, as_csv)
-    check_targets(force, output, plot)
-    from pertcalc.report import curves_text
-
-    if check_file is not None:
-        if alkali or curve_file or plot:
-            raise InputError("--check FILE stands alone; give the file only.")
-        deliver(curves_text.checked(check_file, as_json, as_csv), output, force)
-        return
-    chosen = curves_text.choose(alkali, gas and checked_gas(gas, curve_file), curve_file)
-    if plot is not None:
-        place = curves_text.plot(chosen, plot)
-        click.echo(f"wrote {place}", err=True)
-        return
-    deliver(curves_text.shown(chosen, as_json, as_csv), output, force)
-
-
+cli.add_command(curves)
 cli.add_command(molecule)
 cli.add_command(verdict)
 

@@ -25,6 +25,7 @@ LAYERS = [
     "results",  # what is handed to the user
     "thermal",  # averages of tabulated cross sections; knows no collision
     "curves",
+    "one_electron",
     "collisions",
     "closed",
     "model_error",
@@ -34,6 +35,7 @@ LAYERS = [
     "validation",
     "report",
     "cli_options",  # words only
+    "cli_curves",
     "cli_molecule",
     "cli_verdict",
     "cli",
