@@ -23,18 +23,20 @@ from pertcalc.species import FROM_MEMORY, noble_gas, noble_gas_symbol
 
 Array = NDArray[np.float64]
 
-DEFAULT_MODEL = "soft"
-MODELS = ("calibrated", "soft")
+DEFAULT_MODEL = "l-dependent"
+MODELS = (DEFAULT_MODEL, "calibrated", "soft")
 NEGLIGIBLE = 36.0  # exponent where a term is left out: exp(-36) = 2e-16
 
 
 @dataclass(frozen=True, slots=True)
 class GasElectron:
-    """Electron-gas potential ``W(u) + separable terms``, W = local_strength exp(-beta u^2) - alpha_d damping(u)/(2 u^4).
+    """Electron-gas potential: local W(u) plus separable terms, and the gas polarised by electron and core together.
 
-    ``symbol``, ``model`` names; ``alpha_d`` [bohr^3]; ``cutoff`` d [bohr]; ``local_strength`` [hartree]; ``beta``
-    [bohr^-2]; ``separable`` terms; ``scattering_length_bohr`` [bohr]; ``source``, ``mark`` where the parameters come
-    from; ``residuals`` what the fit leaves, in words.
+    ``W = B exp(-beta u^2) - alpha_d D(u)/(2u^4) - (alpha_q - 6 beta_1) D(u)^2/(2u^6)``, D = ``damping``.
+    ``symbol``, ``model`` names; ``alpha_d`` [bohr^3], ``alpha_q`` [bohr^5] dipole and quadrupole polarisability,
+    ``beta_1`` [bohr^5] how much the dipole lags behind a moving electron; ``cutoff`` d [bohr]; ``local_strength`` B
+    [hartree]; ``beta`` [bohr^-2]; ``separable`` terms; ``scattering_length_bohr`` [bohr] as fitted; ``source``,
+    ``mark`` where the parameters come from; ``residuals`` what the fit leaves, in words.
     """
 
     symbol: str
@@ -48,31 +50,45 @@ class GasElectron:
     source: str
     mark: str
     residuals: str
+    alpha_q: float = 0.0
+    beta_1: float = 0.0
+
+    @property
+    def tail_q(self) -> float:
+        """Coefficient alpha_q - 6 beta_1 [bohr^5] of the -1/(2u^6) tail."""
+        return self.alpha_q - 6.0 * self.beta_1
 
     @property
     def reach(self) -> float:
-        """Radius [bohr] beyond which nothing but -alpha_d/(2u^4) is left."""
-        ranges = [math.sqrt(NEGLIGIBLE / self.beta) if self.local_strength else 0.0]
+        """Radius [bohr] beyond which only the bare tail is left; a multiple of 2, so that tail waves are reused."""
+        ranges = [math.sqrt(NEGLIGIBLE / self.beta)] if self.local_strength else []
         ranges += [math.sqrt(NEGLIGIBLE / term.gamma) + 1.0 for term in self.separable]
-        return max(2.0, self.cutoff * NEGLIGIBLE ** (1 / 6), *ranges)
+        return 2.0 * math.ceil(0.5 * max(2.0, self.cutoff * NEGLIGIBLE ** (1 / 6), *ranges))
 
     def damping(self, u: ArrayLike) -> Array:
-        """Factor [1] of the polarisation energy, ``1 - exp(-(u/d)^6)``, shape of u [bohr]; its root damps one field."""
+        """D(u) = ``1 - exp(-(u/d)^6)`` [1], shape of u [bohr]: damps the square of a field, its gradient once."""
         return np.asarray(-np.expm1(-((np.asarray(u, dtype=np.float64) / self.cutoff) ** 6)))
+
+    def polarisation(self, u: ArrayLike, tail_q: float) -> Array:
+        """Energy [hartree] of the gas at u [bohr] from one unit charge, ``-alpha_d D/(2u^4) - tail_q D^2/(2u^6)``.
+
+        ``tail_q`` [bohr^5]: ``self.tail_q`` for the electron, alpha_q for the core, which does not move.
+        """
+        u = np.maximum(np.asarray(u, dtype=np.float64), 1e-3 * self.cutoff)
+        D = self.damping(u)
+        return np.asarray(-0.5 * self.alpha_d * D / u**4 - 0.5 * tail_q * (D / u**3) ** 2)
 
     def local(self, u: ArrayLike) -> Array:
         """W(u) [hartree], shape of u [bohr]; finite at u = 0."""
-        u = np.maximum(np.asarray(u, dtype=np.float64), 1e-3 * self.cutoff)
-        return np.asarray(
-            self.local_strength * np.exp(-self.beta * u * u) - 0.5 * self.alpha_d * self.damping(u) / u**4
-        )
+        u = np.asarray(u, dtype=np.float64)
+        return np.asarray(self.local_strength * np.exp(-self.beta * u * u) + self.polarisation(u, self.tail_q))
 
     def cross(self, r: ArrayLike, R: ArrayLike, cos_theta: ArrayLike) -> Array:
         """Energy of the gas polarised by core and electron together, beyond the sum of the two alone.
 
-        ``+ alpha_d cos(chi)/(R^2 u^2) sqrt(damping(u) damping(R))``, chi the angle at the gas between core and
-        electron: each field is damped by the root of what damps its energy, so that
-        -alpha_d/2 |E_core + E_electron|^2 is the sum of core, electron and cross term.
+        ``alpha_d cos(chi) sqrt(D(u) D(R))/(R^2 u^2) + alpha_q P2(cos chi) D(u) D(R)/(R^3 u^3)``, chi the angle at the
+        gas between core and electron: the mixed terms of -alpha_d |E|^2/2 and of its quadrupole analogue, every field
+        damped as in the pure terms.
 
         Parameters
         ----------
@@ -86,8 +102,10 @@ class GasElectron:
         """
         r, R, x = (np.asarray(one, dtype=np.float64) for one in (r, R, cos_theta))
         u = np.maximum(np.sqrt(np.maximum(r * r + R * R - 2.0 * r * R * x, 0.0)), 1e-3 * self.cutoff)
-        fields = np.sqrt(self.damping(u) * self.damping(R)) / (u * R) ** 2
-        return np.asarray(self.alpha_d * (R - r * x) / u * fields)
+        chi = (R - r * x) / u
+        damped = self.damping(u) * self.damping(R)
+        dipole = self.alpha_d * chi * np.sqrt(damped) / (u * R) ** 2
+        return np.asarray(dipole + self.alpha_q * (1.5 * chi * chi - 0.5) * damped / (u * R) ** 3)
 
 
 def gas_electron(symbol: str, model: str = DEFAULT_MODEL) -> GasElectron:
@@ -162,7 +180,7 @@ def custom_gas_electron(
 
 
 def repulsion_for(gas: GasElectron, wanted: float, strongest: float = 1e3) -> float:
-    """Strength [hartree] of the Gaussian repulsion of ``gas`` that gives a scattering length [bohr] without bound states.
+    """Strength [hartree] of the Gaussian of ``gas`` that gives a scattering length [bohr] without a bound state.
 
     Along the branch without bound state the length falls monotonically from that of ``strongest`` [hartree] to
     -infinity, where the first bound state appears. Raises InputError for a length above the branch.

@@ -1,8 +1,8 @@
 """A free electron on one gas atom: phase shifts, scattering length, bound states, cross sections; atomic units.
 
-The potential is local W(u) plus separable terms; beyond ``reach`` only -alpha_d/(2 u^4) is left of it. Inside, the
-radial equation is solved once per l in a polynomial basis with the Bloch operator (R-matrix); outside, the waves of
-the bare polarisation tail are used, so nothing is lost by cutting the tail. notes/electron-gas.md has the equations.
+The potential is local W(u) plus separable terms; beyond ``reach`` only the bare tail -alpha_d/(2u^4) - tail_q/(2u^6)
+is left of it. Inside, the radial equation is solved once per l in a polynomial basis with the Bloch operator
+(R-matrix); outside, the waves of the tail are used, so that nothing is cut off. notes/electron-gas.md: equations.
 """
 
 from __future__ import annotations
@@ -26,6 +26,7 @@ Array = NDArray[np.float64]
 BASIS = 40  # polynomials inside: phase shifts of every model here are then stable to 1e-8 (tests)
 TAIL_PHASE = 1e-8  # the polarisation phase [rad] left outside the radius where free waves begin
 HIGHEST_L = 8
+FAR = 300.0  # [bohr]; beyond it 1/u^6 is below 1e-5 of 1/u^4 at zero energy
 
 
 @dataclass(frozen=True, slots=True)
@@ -48,10 +49,13 @@ class Separable:
 
 
 class Scatterer(Protocol):
-    """What is asked of a potential: polarisability, local part, separable terms, radius beyond which only the tail is left."""
+    """A potential: polarisability, 1/u^6 coefficient, radius of its short-range part, W(u), separable terms."""
 
     @property
     def alpha_d(self) -> float: ...
+
+    @property
+    def tail_q(self) -> float: ...
 
     @property
     def reach(self) -> float: ...
@@ -129,13 +133,13 @@ def inner_region(gas: Scatterer, l: int, core_radius: float = 0.0, n: int = BASI
 
 
 @lru_cache(maxsize=4096)
-def _tail_waves(alpha_d: float, k: float, l: int, radius: float) -> tuple[float, float, float, float]:
+def _tail_waves(alpha_d: float, tail_q: float, k: float, l: int, radius: float) -> tuple[float, float, float, float]:
     """f, f', g, g' at ``radius``: waves of the bare tail that become sin and cos of (k u - l pi/2) outside."""
     start = max(radius, 40.0 / k, (alpha_d / (6.0 * k * TAIL_PHASE)) ** (1.0 / 3.0)) if alpha_d else radius
     z = k * start
     j, y = spherical_jn(l, z), spherical_yn(l, z)
     dj, dy = spherical_jn(l, z, derivative=True), spherical_yn(l, z, derivative=True)
-    state = [z * j, k * (j + z * dj), -z * y, -k * (y + z * dy)]
+    state = [float(x) for x in (z * j, k * (j + z * dj), -z * y, -k * (y + z * dy))]
     if start > radius:
         shift = alpha_d / (6.0 * k * start**3)  # mean phase the tail adds outside start
         c, s = math.cos(shift), math.sin(shift)
@@ -143,12 +147,21 @@ def _tail_waves(alpha_d: float, k: float, l: int, radius: float) -> tuple[float,
         # sin(ku + delta) beyond start is sin(ku + delta - shift) there
         state = [f * c - g * s, df * c - dg * s, g * c + f * s, dg * c + df * s]
 
-        def slope(u: float, q: Array) -> list[float]:
-            F = l * (l + 1) / u**2 - alpha_d / u**4 - k * k
-            return [q[1], F * q[0], q[3], F * q[2]]
-
-        state = solve_ivp(slope, (start, radius), state, method="DOP853", rtol=1e-11, atol=1e-13).y[:, -1].tolist()
+        state = _inward(start, radius, state, alpha_d, tail_q, k, l)
     return state[0], state[1], state[2], state[3]
+
+
+def _inward(
+    start: float, radius: float, waves: list[float], alpha_d: float, tail_q: float, k: float, l: int
+) -> list[float]:
+    """Carry two waves and their slopes from ``start`` in to ``radius`` in the bare tail."""
+
+    def slope(u: float, q: Array) -> list[float]:
+        F = l * (l + 1) / u**2 - alpha_d / u**4 - tail_q / u**6 - k * k
+        return [q[1], F * q[0], q[3], F * q[2]]
+
+    found = solve_ivp(slope, (start, radius), waves, method="DOP853", rtol=1e-11, atol=1e-13)
+    return [float(x) for x in found.y[:, -1]]
 
 
 def _checked_energies(energies: ArrayLike) -> Array:
@@ -191,22 +204,25 @@ def phase_shifts(gas: Scatterer, energies: ArrayLike, l: int, core_radius: float
     E = _checked_energies(energies)
     R = np.atleast_1d(inner_region(gas, l, core_radius).r_matrix(E)).ravel()
     k = np.sqrt(2.0 * np.atleast_1d(E)).ravel()
-    f, df, g, dg = np.array([_tail_waves(float(gas.alpha_d), float(one), l, float(gas.reach)) for one in k]).T
+    f, df, g, dg = np.array([_tail_waves(gas.alpha_d, gas.tail_q, float(one), l, gas.reach) for one in k]).T
     return np.arctan((f - R * df) / (R * dg - g)).reshape(E.shape)
 
 
-def _zero_energy_tail(alpha_d: float, l: int, radius: float) -> tuple[float, float, float, float]:
-    """(decaying, its slope, growing, its slope) at ``radius`` for E = 0: ``u^-l``, ``u^(l+1)`` or j_l, y_l of sqrt(alpha_d)/u."""
+@lru_cache(maxsize=1024)
+def _zero_energy_tail(alpha_d: float, tail_q: float, l: int, radius: float) -> tuple[float, float, float, float]:
+    """(decaying, its slope, growing, its slope) at ``radius`` for E = 0.
+
+    ``u^-l`` and ``u^(l+1)``; with polarisation j_l and y_l of sqrt(alpha_d)/u, carried in from FAR under a 1/u^6 tail.
+    """
     if alpha_d == 0:
         return radius**-l, -l * radius ** (-l - 1), radius ** (l + 1), (l + 1) * radius**l
-    z = math.sqrt(alpha_d) / radius
-    dz = -z / radius
-    return (
-        float(spherical_jn(l, z)),
-        float(spherical_jn(l, z, derivative=True)) * dz,
-        float(spherical_yn(l, z)),
-        float(spherical_yn(l, z, derivative=True)) * dz,
-    )
+    u = max(radius, FAR) if tail_q else radius
+    z = math.sqrt(alpha_d) / u
+    dj, dy = spherical_jn(l, z, derivative=True), spherical_yn(l, z, derivative=True)
+    waves = [float(spherical_jn(l, z)), float(-dj * z / u), float(spherical_yn(l, z)), float(-dy * z / u)]
+    if u > radius:
+        waves = _inward(u, radius, waves, alpha_d, tail_q, 0.0, l)
+    return waves[0], waves[1], waves[2], waves[3]
 
 
 def scattering_length(gas: Scatterer, core_radius: float = 0.0) -> float:
@@ -219,7 +235,7 @@ def scattering_length(gas: Scatterer, core_radius: float = 0.0) -> float:
     Source: T. F. O'Malley, L. Spruch and L. Rosenberg, J. Math. Phys. 2, 491 (1961), the 1/u^4 case (FROM MEMORY).
     """
     R = float(inner_region(gas, 0, core_radius).r_matrix(0.0))
-    decay, d_decay, grow, d_grow = _zero_energy_tail(gas.alpha_d, 0, gas.reach)
+    decay, d_decay, grow, d_grow = _zero_energy_tail(gas.alpha_d, gas.tail_q, 0, gas.reach)
     ratio = -(grow - R * d_grow) / (decay - R * d_decay)  # phi = grow + ratio * decay
     # j_0 = sin z/z -> 1 and y_0 = -cos z/z -> -u/sqrt(alpha): phi -> -(u - ratio sqrt(alpha))/sqrt(alpha)
     return ratio * math.sqrt(gas.alpha_d) if gas.alpha_d else -ratio
@@ -234,7 +250,7 @@ def bound_states(gas: Scatterer, l: int = 0) -> int:
     Parameters: ``gas`` potential [atomic units], ``l``. Returns the count. Raises InputError for l outside 0 .. 8.
     """
     inner = inner_region(gas, l)
-    decay, slope, _, _ = _zero_energy_tail(gas.alpha_d, l, gas.reach)
+    decay, slope, _, _ = _zero_energy_tail(gas.alpha_d, gas.tail_q, l, gas.reach)
     # In the eigenbasis of the Bloch Hamiltonian the boundary condition phi'/phi = L is -1/2 L |a><a|.
     bounded = np.diag(inner.poles) - 0.5 * (slope / decay) * np.outer(inner.amplitudes, inner.amplitudes)
     return int(np.sum(np.linalg.eigvalsh(bounded) < 0.0))
