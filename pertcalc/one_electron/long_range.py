@@ -1,8 +1,8 @@
 """The long range of the pair model, and what it lacks of the dispersion coefficients.
 
 Far away the model is first order: the polarised gas, averaged over the valence orbital, falls off as
-``-C6/R^6 - C8/R^8 - C10/R^10`` with coefficients of its own. They lack the gas atom's own frequency, the core that
-moves with the electron and the octupole of the gas. The difference to the coefficients of dispersion.py is added to
+``-C6/R^6 - C8/R^8 - C10/R^10`` with coefficients of its own. They are adiabatic: but for one term the gas follows the
+electron at once, and its octupole is missing. The difference to the coefficients of dispersion.py is added to
 the curves, damped inside the charge cloud, so that value and slope stay smooth and the tail becomes the true one.
 notes/model-curves.md has the formulas.
 """
@@ -34,7 +34,7 @@ class Polarised(Protocol):
 
 
 class Orbitals(Protocol):
-    """Nodes, weights and reduced radial functions of the atom."""
+    """Nodes, weights, reduced radial functions and dipole operator of the atom."""
 
     @property
     def r(self) -> Array: ...
@@ -42,13 +42,14 @@ class Orbitals(Protocol):
     def weights(self) -> Array: ...
     @property
     def radial(self) -> tuple[Array, ...]: ...
+    def dipole_operator(self, r: Array) -> Array: ...
 
 
 def model_coefficients(atom: Orbitals, electron: Polarised, core: Mapping[int, float]) -> dict[str, dict[int, float]]:
-    """C6, C8, C10 that the pair model has by itself.
+    """C6, C8, C10 that the pair model has by itself, averaged over the ns, np pi and np sigma orbital.
 
-    ``V = -alpha_d/2 |E|^2 - ...`` of core and electron, every term a sum of ``u^-p = sum_j G_j^(p/2)(x) r^j/R^(j+p)``
-    (Gegenbauer polynomials), averaged over the ns, np pi and np sigma orbital, plus the dispersion of the core.
+    Dipole of the gas: ``alpha_d/2 |E|^2`` with the multipoles r - p, r^2, r^3 ... of the atom. Quadrupole: core,
+    electron and cross term as series of ``u^-p = sum_j G_j^(p/2)(x) r^j/R^(j+p)`` (Gegenbauer polynomials).
 
     Parameters
     ----------
@@ -65,27 +66,32 @@ def model_coefficients(atom: Orbitals, electron: Polarised, core: Mapping[int, f
     """
     x, w = np.polynomial.legendre.leggauss(24)
     density = {"X": np.full_like(x, 0.5), "A": 0.75 * (1.0 - x * x), "B": 1.5 * x * x}
-    dipole, quadrupole = _series(x, electron)
+    quadrupole = _quadrupole_series(x, electron)
+    moments = [np.zeros(len(atom.r)), atom.dipole_operator(atom.r), *(atom.r**k for k in range(2, 6))]
     found = {}
     for state, (l, _) in ORBITALS.items():
-        orbital = atom.weights * atom.radial[l][0] ** 2
-        powers = [float(np.sum(orbital * atom.r**k)) for k in range(7)]
-        angular = w * density[state]
-        found[state] = {
-            n: core.get(n, 0.0)
-            - powers[n - 4] * float(angular @ dipole[n - 4])
-            - powers[n - 6] * float(angular @ quadrupole[n - 6])
-            for n in ORDERS
-        }
+        orbital, angular = atom.weights * atom.radial[l][0] ** 2, w * density[state]
+        found[state] = {n: core.get(n, 0.0) for n in ORDERS}
+        for n in ORDERS:
+            for k in range(1, n - 4):
+                field = float(angular @ _field_product(x, k, n - 4 - k))
+                found[state][n] += 0.5 * electron.alpha_d * field * float(orbital @ (moments[k] * moments[n - 4 - k]))
+            found[state][n] -= float(orbital @ atom.r ** (n - 6)) * float(angular @ quadrupole[n - 6])
     return found
 
 
-def _series(x: Array, electron: Polarised) -> tuple[Array, Array]:
-    """Coefficients of (r/R)^k, k = 0 ... 6, in R^4 V_dipole and R^6 V_quadrupole, shape (7, nx)."""
+def _field_product(x: Array, k: int, j: int) -> Array:
+    """R^(k+j+4) E_k . E_j of axial multipoles of unit strength: (k+1)(j+1) P_k P_j + P_k^1 P_j^1."""
+    P_k, P_j = (np.polynomial.legendre.Legendre.basis(order) for order in (k, j))
+    return (k + 1) * (j + 1) * P_k(x) * P_j(x) + (1.0 - x * x) * P_k.deriv()(x) * P_j.deriv()(x)
+
+
+def _quadrupole_series(x: Array, electron: Polarised) -> Array:
+    """Coefficients of (r/R)^k, k = 0 ... 4, in R^6 V of the terms with the quadrupole of the gas, shape (5, nx)."""
 
     def inverse(p: int) -> Array:
         """(R/u)^p as a series in r/R."""
-        return np.array([eval_gegenbauer(k, p / 2, x) for k in range(7)])
+        return np.array([eval_gegenbauer(k, p / 2, x) for k in range(5)])
 
     def times_axis(series: Array) -> Array:
         """The series times (R - r x)/R."""
@@ -93,12 +99,10 @@ def _series(x: Array, electron: Polarised) -> tuple[Array, Array]:
         moved[1:] -= x * series[:-1]
         return moved
 
-    one = np.zeros((7, len(x)))
+    one = np.zeros((5, len(x)))
     one[0] = 1.0
-    dipole = -0.5 * electron.alpha_d * (one + inverse(4) - 2.0 * times_axis(inverse(3)))
     mixed = 1.5 * times_axis(times_axis(inverse(5))) - 0.5 * inverse(3)
-    quadrupole = -0.5 * electron.alpha_q * (one - 2.0 * mixed) - 0.5 * electron.tail_q * inverse(6)
-    return dipole, quadrupole
+    return -0.5 * electron.alpha_q * (one - 2.0 * mixed) - 0.5 * electron.tail_q * inverse(6)
 
 
 def correction(R: Array, kappa: float, wanted: Mapping[int, float], own: Mapping[int, float]) -> Array:

@@ -9,8 +9,6 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
-from functools import lru_cache
-from typing import Protocol
 
 import numpy as np
 from numpy.typing import NDArray
@@ -26,40 +24,14 @@ from pertcalc.one_electron.gas_orbitals import (
     partial_waves,
     values,
 )
-from pertcalc.one_electron.scattering import Separable
+from pertcalc.one_electron.interaction import ElectronGas, Grid, RadialStates, make_grid, multipoles, potential
 
 Array = NDArray[np.float64]
-# W(u) changes over about one bohr; u = S sinh t spreads the nodes as the potential needs them.
-STRETCH = 2.0
 SYMMETRIES = {"Sigma": 0, "Pi": 1}
 # A Gaussian that the rest of the basis holds but for this squared norm adds nothing but rounding.
 INDEPENDENT = 1e-5
 # Exponents [bohr^-2] around the gas: l -> lowest, highest, number. notes/model-curves.md shows what each adds.
 EXPONENTS = {0: (0.03, 8.0, 8), 1: (0.05, 3.0, 7), 2: (0.08, 0.8, 4)}
-
-
-class RadialStates(Protocol):
-    """What is needed of the atom: nodes and weights in r, energies and reduced functions of each l, core potential."""
-
-    @property
-    def r(self) -> Array: ...
-    @property
-    def weights(self) -> Array: ...
-    @property
-    def energies(self) -> tuple[Array, ...]: ...
-    @property
-    def radial(self) -> tuple[Array, ...]: ...
-    @property
-    def core(self) -> Callable[[int, Array], Array]: ...
-
-
-class ElectronGas(Protocol):
-    """What is needed of the gas atom: local potential, core-electron cross term, separable terms."""
-
-    @property
-    def separable(self) -> Sequence[Separable]: ...
-    def local(self, u: Array) -> Array: ...
-    def cross(self, r: Array, R: Array, cos_theta: Array) -> Array: ...
 
 
 @dataclass(frozen=True, slots=True)
@@ -96,77 +68,6 @@ class Basis:
             rest = tuple(orbital for orbital in self.gas_orbitals if orbital not in tightest)
             found["gaussians"] = replace(self, gas_orbitals=rest)
         return found
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class Grid:
-    """Nodes about the core, dense where the gas is: r (nq, 1) [bohr], u [bohr], x [1], weight of dx [1], (nq, nx)."""
-
-    r: Array
-    u: Array
-    x: Array
-    weight: Array
-
-
-def make_grid(r: Array, R: float, nodes: int) -> Grid:
-    """Nodes of Int_{-1}^{1} dx = Int_{|r-R|}^{r+R} u du/(r R) at each r, u = S sinh t, Gauss-Legendre in t.
-
-    Parameters
-    ----------
-    r : array, shape (nq,)
-        Distances of the electron from the core [bohr], > 0.
-    R : float
-        Distance of the gas from the core [bohr], > 0.
-    nodes : int
-
-    Returns
-    -------
-    Grid
-    """
-    points, weights = _legendre_rule(nodes)
-    low, high = np.arcsinh(np.abs(r - R) / STRETCH), np.arcsinh((r + R) / STRETCH)
-    half = 0.5 * (high - low)[:, None]
-    t = 0.5 * (high + low)[:, None] + half * points
-    u = STRETCH * np.sinh(t)
-    product = r[:, None] * R
-    x = np.clip(1.0 + ((r[:, None] - R) ** 2 - u * u) / (2.0 * product), -1.0, 1.0)
-    return Grid(r[:, None], u, x, weights * half * u * STRETCH * np.cosh(t) / product)
-
-
-@lru_cache(maxsize=8)
-def _legendre_rule(nodes: int) -> tuple[Array, Array]:
-    points, weights = np.polynomial.legendre.leggauss(nodes)
-    return points, weights
-
-
-def multipoles(V: Array, grid: Grid, largest: int) -> Array:
-    """Legendre components about the core, W_lambda(r) = (2 lambda + 1)/2 Int_{-1}^{1} V(r, x) P_lambda(x) dx.
-
-    Parameters
-    ----------
-    V : array, shape (nq, nx)
-        Potential at the nodes [hartree].
-    grid : Grid
-    largest : int
-        Largest lambda.
-
-    Returns
-    -------
-    ndarray, shape (largest+1, nq)
-        [hartree]
-    """
-    f, W = V * grid.weight, np.empty((largest + 1, len(V)))
-    previous, current = np.zeros_like(V), np.ones_like(V)
-    for order in range(largest + 1):
-        W[order] = (order + 0.5) * np.einsum("ij,ij->i", f, current)
-        previous, current = current, ((2 * order + 1) * grid.x * current - order * previous) / (order + 1)
-    return W
-
-
-def potential(states: RadialStates, electron: ElectronGas, R: float, grid: Grid) -> Array:
-    """Local electron-gas potential and cross term at the nodes of a grid [hartree], shape (nq, nx)."""
-    r = np.broadcast_to(grid.r, grid.u.shape)
-    return electron.local(grid.u) + electron.cross(r, np.full_like(grid.u, R), grid.x)
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -10,7 +10,7 @@ import pytest
 from scipy.special import ive, sph_harm_y
 
 from pertcalc.errors import InputError
-from pertcalc.one_electron import pair
+from pertcalc.one_electron import interaction, pair
 from pertcalc.one_electron.atom import solve_atom
 from pertcalc.one_electron.core import HYDROGEN as PROTON
 from pertcalc.one_electron.gas_orbitals import (
@@ -51,17 +51,21 @@ class Gas:
     crossed: bool = False
     separable: tuple[Term, ...] = field(default=())
 
-    def damp(self, u):
+    @property
+    def alpha_d(self):
+        return self.alpha
+
+    def damping(self, u):
         return -np.expm1(-((u / self.d) ** 6))
 
     def local(self, u):
-        return self.height * np.exp(-self.beta * u**2) - self.alpha / (2 * u**4) * self.damp(u)
+        return self.height * np.exp(-self.beta * u**2) - self.alpha / (2 * u**4) * self.damping(u)
 
     def cross(self, r, R, cos_theta):
         if not self.crossed:
             return np.zeros_like(r * cos_theta)
         u2 = r**2 + R**2 - 2 * r * R * cos_theta
-        return self.alpha * (R - r * cos_theta) / (R**2 * u2**1.5) * np.sqrt(self.damp(np.sqrt(u2)))
+        return self.alpha * (R - r * cos_theta) / (R**2 * u2**1.5) * np.sqrt(self.damping(np.sqrt(u2)))
 
 
 @dataclass(frozen=True)
@@ -71,6 +75,9 @@ class Atom:
     energies: tuple
     radial: tuple
     core = PROTON
+
+    def dipole_operator(self, r):
+        return r
 
 
 def bound_hydrogen() -> Atom:
@@ -92,8 +99,8 @@ def hydrogen(l_max: int, size: int = 40, r_max: float = 40.0):
 
 def expanded(V, R: float, largest: int, nodes: int) -> np.ndarray:
     """Multipoles of V(u, x) on R_GRID."""
-    grid = pair.make_grid(R_GRID, R, nodes)
-    return pair.multipoles(V(grid.u, grid.x), grid, largest)
+    grid = interaction.make_grid(R_GRID, R, nodes)
+    return interaction.multipoles(V(grid.u, grid.x), grid, largest)
 
 
 R_GRID = np.array([0.01, 0.4, 2.0, 5.0, 5.9, 6.0, 6.3, 9.0, 30.0])
@@ -132,6 +139,24 @@ def test_angular_factors_are_the_integrals_of_three_harmonics(l, order, k, m):
     legendre = np.polynomial.legendre.Legendre.basis(order)(x)
     exact = 2 * np.pi * np.sum(w * (sph_harm_y(l, m, theta, 0) * sph_harm_y(k, m, theta, 0)).real * legendre)
     assert legendre_element(l, order, k, m) == pytest.approx(exact, abs=1e-13)
+
+
+def test_terms_of_the_polarised_gas_are_the_square_of_the_summed_field():
+    # -alpha/2 |E_core + E_electron + E_p|^2 with Cartesian vectors; p is the dipole of the core, towards the electron;
+    # fields of core and p damped at R, that of the electron at u.
+    gas, R, p = Gas(alpha=3.0, d=2.5, crossed=True), 4.0, 0.7
+    r, x = np.array([0.5, 2.0, 3.7, 6.0]), np.array([-0.9, 0.3, 0.95, 0.1])
+    n = np.stack([np.sqrt(1 - x**2), 0 * x, x], axis=1)
+    offset = np.array([0, 0, R]) - r[:, None] * n  # from the electron to the gas
+    u = np.linalg.norm(offset, axis=1)
+    core = np.array([0, 0, 1 / R**2]) * math.sqrt(gas.damping(R))
+    electron = -offset / u[:, None] ** 3 * np.sqrt(gas.damping(u))[:, None]
+    dipole = p * (3 * n[:, 2:] * np.array([0, 0, 1]) - n) / R**3 * math.sqrt(gas.damping(R))
+    square = np.sum((core + electron + dipole) ** 2, axis=1)
+    mixed = gas.cross(r, R, x) * math.sqrt(gas.damping(R))
+    found = gas.local(u) - gas.alpha / (2 * R**4) * gas.damping(R) + mixed
+    found += interaction.core_dipole(gas, R, r, u, x, np.full_like(x, p))
+    np.testing.assert_allclose(found, -gas.alpha / 2 * square, rtol=1e-12)
 
 
 # --- against plain three-dimensional sums ----------------------------------------------------------------------------
