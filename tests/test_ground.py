@@ -165,6 +165,13 @@ def test_dense_vapour_takes_the_spin_temperature():
     dense = changed(alkali_density_cm3=Sourced(1e14, "cm^-3", "t", "COMPUTED", 1e13))
     processes = ground_processes(RB, RB87, dense)
     assert exchange_is_fast(processes)
+    exchange = next(p.rate.value for p in processes if p.name == EXCHANGE)
+    # Light that damps the electron spin faster than exchange restores it leaves no spin temperature.
+    for light, fast in ((0.99 * exchange, True), (1.01 * exchange, False)):
+        assert exchange_is_fast(processes, light) is fast
+        lit = {p.name: p for p in orientation_decay(processes, 1.5, light)}
+        dark = next(p.rate.value for p in processes if p.name == BY_GAS)
+        assert lit[BY_GAS].rate.value == pytest.approx(dark / (6 if fast else 8), rel=1e-12)
     before, after = ({p.name: p for p in some} for some in (processes, orientation_decay(processes, 1.5)))
     assert after[BY_GAS].rate.value == pytest.approx(before[BY_GAS].rate.value / 6, rel=1e-12)
     assert "spin temperature" in after[BY_GAS].note

@@ -19,8 +19,9 @@ from pertcalc.vapour import verdict as verdicts
 from pertcalc.vapour.excited import DECAY
 from pertcalc.vapour.fill import IMPACT_LIMIT, impact_parameter
 from pertcalc.vapour.ground import TRANSIT, WALL
-from pertcalc.vapour.ground_balance import PUMPING, decays_at
+from pertcalc.vapour.ground_balance import FAST_EXCHANGE, PUMPING, RESOLVING, decays_at
 from pertcalc.vapour.pairs import PAIRS
+from pertcalc.vapour.pump_light import pump_light
 from pertcalc.vapour.pumping import pumping
 from pertcalc.vapour.question import ask
 from pertcalc.vapour.spin_destruction import BY_ALKALI, BY_GAS, EXCHANGE
@@ -186,7 +187,9 @@ def test_ground_lines_are_drawn_as_computed(found, drawn):
 def test_walls_and_gas_meet_at_the_dot(found, drawn):
     for case in ("Rb Ar", "Cs He"):
         one, ((x, y),) = found[case], dots(drawn[case].axes[1])
-        rates = {p.name: p.rate for p in decays_at(one.ground, x / one.question.fill.pressure_torr) if p.rate}
+        factor = x / one.question.fill.pressure_torr
+        light = pump_light(one.question, one.isotope, one.lines, one.rates, factor)
+        rates = {p.name: p.rate for p in decays_at(one.ground, factor, light) if p.rate}
         for names in ((WALL, TRANSIT), (BY_GAS, PAIRS)):
             assert sum(rates[n].value for n in names if n in rates) == pytest.approx(y, rel=1e-6)
     axes = drawn["Rb Ar"].axes[1]
@@ -197,24 +200,41 @@ def test_walls_and_gas_meet_at_the_dot(found, drawn):
     assert words.startswith("walls = gas") and words.endswith("Torr")
 
 
+def light_at(one, factor: float) -> float:
+    """Decay of <F_z> by the light with the pressure of the cell times a factor, as the figure draws it."""
+    p = factor * one.question.fill.pressure_torr
+    lines = ground_lines(one, p, 1.1 * p)
+    return lines.rates[PUMPING][np.argmin(np.abs(lines.pressures - p))]
+
+
 def test_pumping_follows_the_pressure(found):
     one = found["Rb Ar"]
-    assert figures.pumping_at(one, 1.0) == pytest.approx(one.ground.pumping.value, rel=1e-9)
+    assert light_at(one, 1.0) == pytest.approx(one.ground.pumping.value, rel=1e-9)
     # Without gas the excited level keeps its orientation: only repopulation pumping is left.
     line, light = one.lines["D1"], one.question.light
     free = pumping(replace(line, fwhm_rad_s=0.0, shift_rad_s=0.0), light.beam)
     assert free.spin.kind == "repopulation"
-    # Without fast spin exchange <F_z> of 85Rb decays at 2/(2I+1)^2 = 1/18 of the damping of the electron spin.
-    assert figures.pumping_at(one, 1e-8) == pytest.approx(free.spin.damping / 18, rel=1e-6)
+    # Narrow light on a narrow line takes whole atoms of one F: the nucleus does not slow it.
+    assert light_at(one, 1e-8) == pytest.approx(free.spin.damping, rel=1e-6)
     # Far beyond Doppler width and hyperfine structure the peak of a Lorentz line falls as 1/width, that is 1/density.
-    assert figures.pumping_at(one, 4000.0) / figures.pumping_at(one, 8000.0) == pytest.approx(2.0, rel=1e-2)
+    assert light_at(one, 4000.0) / light_at(one, 8000.0) == pytest.approx(2.0, rel=1e-2)
+
+
+def test_where_the_light_no_longer_resolves_the_ground_level_its_line_steps(found, drawn):
+    """Without fast spin exchange <F_z> of 85Rb decays at 2/(2I+1)^2 = 1/18 of the damping of the electron spin."""
+    lines = ground_lines(found["Rb Ar"], *pressure_range(found["Rb Ar"]))
+    ((x, side, _),) = [step for step in lines.steps if step[2] == RESOLVING]
+    i = np.searchsorted(lines.pressures, x)
+    below, above = lines.rates[PUMPING][i - 1 : i + 1]
+    assert side == "below" and below / above == pytest.approx(18.0, rel=1e-6)
+    assert f"{RESOLVING} below" in legend(drawn["Rb Ar"].axes[1])
 
 
 def test_where_spin_exchange_stops_to_be_fastest_the_lines_step(found, drawn):
     """Closed forms of both limits: G/q, q = [4I(I+1)+3]/3, and 2G/(2I+1)^2; 133Cs has I = 7/2."""
     one = found["Cs He"]
     lines = ground_lines(one, *pressure_range(one))
-    fastest = [x for x, _, what in lines.steps if what.startswith("spin exchange")]
+    fastest = [x for x, _, what in lines.steps if what == FAST_EXCHANGE]
     assert len(fastest) == 2
     ratio = (2 / 8**2) / (3 / (4 * 3.5 * 4.5 + 3))
     for x, turn in zip(fastest, (1 / ratio, ratio), strict=True):

@@ -3,8 +3,6 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterable
-from dataclasses import dataclass, replace
 from os import PathLike
 from pathlib import Path
 from textwrap import wrap
@@ -16,15 +14,14 @@ from numpy.typing import NDArray
 from pertcalc.errors import InputError
 from pertcalc.report.curve_figures import BLACK, BLUE, RC, SKY, VERMILION, figure_format, write_figure
 from pertcalc.report.tables import number, percent
+from pertcalc.report.verdict_lines import GAS, SUM, WALLS, GroundLines, ground_lines
 from pertcalc.report.verdict_words import VISIBLE
 from pertcalc.species import Sourced
 from pertcalc.vapour.excited import DECAY, FIELD, RankBalance
 from pertcalc.vapour.fill import IMPACT_LIMIT
-from pertcalc.vapour.ground import TRANSIT, WALL, GroundProcess, exchange_is_fast, ground_processes
-from pertcalc.vapour.ground_balance import PUMPING, GroundBalance, decays_at, light_decay
-from pertcalc.vapour.level_rates import level_rates
+from pertcalc.vapour.ground import TRANSIT, WALL
+from pertcalc.vapour.ground_balance import PUMPING, GroundBalance
 from pertcalc.vapour.pairs import PAIRS
-from pertcalc.vapour.pumping import pumping
 from pertcalc.vapour.spin_destruction import BY_ALKALI, BY_GAS, EXCHANGE
 from pertcalc.vapour.verdict import Verdict
 
@@ -37,9 +34,6 @@ Array = NDArray[np.float64]
 # The axis runs from 1/SPAN to SPAN times the pressure of the cell, and further to crossovers within REACH of it, with
 # ROOM beyond them for their words.
 SPAN, REACH, ROOM = 100.0, 1e4, 15.0
-PER_DECADE = 60
-SUM, WALLS, GAS = "sum", "wall + transit", "gas + pairs"
-_MEMBERS = {WALLS: (WALL, TRANSIT), GAS: (BY_GAS, PAIRS)}
 _GREY, _SHADE = "#808080", "#dedede"
 _LABEL_WIDTH = 36
 # Lower edge of an error band over its line where the error is as large as the rate: a log axis has no zero.
@@ -61,21 +55,6 @@ _GROUND: dict[str, tuple[str, Any, float]] = {
     WALLS: (BLACK, (0, (1, 3)), 1.1),
     GAS: (BLACK, (0, (4, 3)), 1.1),
 }
-
-
-@dataclass(frozen=True, slots=True)
-class GroundLines:
-    """Decay of <F_z> against the fill pressure: ``pressures`` [Torr], shape (n,); all rates [s^-1], nan where unknown.
-
-    ``rates`` by name: every process, SUM of the known ones that destroy orientation, PUMPING with light, WALLS and GAS
-    where they meet and have two known members; ``sum_error`` of SUM, absolute, nan once a part states none; ``steps``
-    where one limit of the treatment takes over: pressure [Torr], the side on which it holds, and what holds.
-    """
-
-    pressures: Array
-    rates: dict[str, Array]
-    sum_error: Array
-    steps: tuple[tuple[float, str, str], ...]
 
 
 def save_rates(found: Verdict, path: str | PathLike[str]) -> Path:
@@ -148,79 +127,6 @@ def impact_pressure(found: Verdict) -> tuple[str, float]:
     line = max(found.overlap, key=lambda one: found.overlap[one])
     worst = found.overlap[line]
     return line, found.question.fill.pressure_torr * IMPACT_LIMIT / worst if worst > 0 else math.inf
-
-
-def ground_lines(found: Verdict, low: float, high: float) -> GroundLines:
-    """Every decay of <F_z> from fill pressure ``low`` to ``high`` [Torr]; steps have a point on either side."""
-    ground, p = found.ground, found.question.fill.pressure_torr
-    grid = np.geomspace(low, high, round(PER_DECADE * math.log10(high / low)) + 1)
-    steps = _steps(ground, p, grid)
-    extra = [p, *(x * (1 + side) for x, *_ in steps for side in (-1e-9, 1e-9))]
-    meet = ground.crossover_pressure_torr
-    met = [meet] if meet is not None and low <= meet <= high else []
-    pressures = np.unique(np.concatenate([grid, extra, met]))
-    decays = [{one.name: one for one in decays_at(ground, x / p)} for x in pressures]
-    rates = {name: np.array([_rate(at[name]) for at in decays]) for name in decays[0]}
-    acting = [[one.rate for one in at.values() if one.destroys and one.rate is not None] for at in decays]
-    rates[SUM] = np.array([sum(one.value for one in parts) if parts else math.nan for parts in acting])
-    error = np.array([_quadrature(parts) for parts in acting])
-    for name, members in _MEMBERS.items() if met else ():
-        known = [rates[one] for one in members if one in rates and np.isfinite(rates[one]).any()]
-        if len(known) > 1:
-            rates[name] = np.nansum(known, axis=0)
-    if found.pumping is not None:
-        rates[PUMPING] = np.array([pumping_at(found, x / p) for x in pressures])
-    return GroundLines(pressures, rates, error, steps)
-
-
-def pumping_at(found: Verdict, factor: float) -> float:
-    """Decay of <F_z> by absorption of the light [s^-1], the gas density of the cell times ``factor`` [1].
-
-    Width, shift and mixing of the excited level change with the density; a beam at the peak stays at the peak.
-    """
-    light, gas, beam = found.question.light, found.rates, found.pumping
-    assert light is not None and gas is not None and beam is not None  # the caller looked
-    line = found.lines[light.line]
-    moved = replace(line, fwhm_rad_s=factor * line.fwhm_rad_s, shift_rad_s=factor * line.shift_rad_s)
-    electronic = level_rates(found.ground.atom, gas, factor * found.question.gas_density_cm3)
-    there = pumping(moved, light.beam, electronic, slowing_down=beam.spin.slowing_down)
-    return light_decay(there, found.isotope, _forms(found.ground, factor)[0]).value
-
-
-def _rate(process: GroundProcess) -> float:
-    return math.nan if process.rate is None else process.rate.value
-
-
-def _quadrature(parts: Iterable[Sourced]) -> float:
-    """Error of a sum of independent rates; nan as soon as one states none, or there is none."""
-    errors = [math.nan if one.error is None else one.error for one in parts]
-    return math.hypot(*errors) if errors else math.nan
-
-
-def _forms(ground: GroundBalance, factor: float) -> tuple[bool, bool]:
-    """Which limits hold at a density: spin exchange fastest, bound pairs acting on the electron alone."""
-    n = ground.around.gas_density_cm3
-    assert n is not None  # the caller looked
-    found = ground_processes(ground.atom, ground.isotope, replace(ground.around, gas_density_cm3=factor * n))
-    return exchange_is_fast(found), any(one.name == PAIRS and one.on_electron for one in found)
-
-
-def _steps(ground: GroundBalance, p: float, grid: Array) -> tuple[tuple[float, str, str], ...]:
-    """Pressures [Torr] where a limit changes, to 1e-9 of each, and what changes there; ``p`` that of the cell."""
-    forms = [_forms(ground, x / p) for x in grid]
-    steps = []
-    for i in range(len(grid) - 1):
-        for which, what in enumerate(("spin exchange is fastest", "bound pairs act on the electron alone")):
-            if forms[i][which] == forms[i + 1][which]:
-                continue
-            below, above = grid[i], grid[i + 1]
-            while above / below - 1 > 1e-9:
-                middle = math.sqrt(below * above)
-                same = _forms(ground, middle / p)[which] == forms[i][which]
-                below, above = (middle, above) if same else (below, middle)
-            side = "below" if forms[i][which] else "above"
-            steps.append((math.sqrt(below * above), side, what))
-    return tuple(steps)
 
 
 def _mark_conditions(panels: tuple[Axes, ...], found: Verdict, low: float, high: float) -> list[str]:

@@ -169,6 +169,13 @@ def _scaled(error: float | None, of: float, value: float) -> float | None:
     return None if error is None or value == 0 else abs(error * of / value)
 
 
+def coefficient(rates: CollisionRates, quantity: str, where: str) -> float:
+    """Width ("fwhm") or shift of a line per unit gas density, at its first temperature [rad s^-1 cm^3]."""
+    values = getattr(rates, quantity)[where].values
+    assert values is not None  # the two close-coupling methods know every one
+    return float(values[0])
+
+
 def coefficient_error(rates: CollisionRates, quantity: str, where: str, rank: int | None = None) -> float | None:
     """Numerical and model error of one coefficient together, relative [1], at its first temperature.
 

@@ -130,23 +130,30 @@ def observable(rate: float, nuclear_spin: float, fast_exchange: bool) -> float:
     return rate * _slowing(nuclear_spin, fast_exchange)
 
 
-def exchange_is_fast(processes: Iterable[Process]) -> bool:
-    """Whether the spin-exchange rate is known and exceeds every other known rate: then a spin temperature holds."""
+def exchange_is_fast(processes: Iterable[Process], light_damping: float = 0.0) -> bool:
+    """Whether the spin-exchange rate is known and exceeds every other known rate: then a spin temperature holds.
+
+    Parameters: ``light_damping`` rate at which absorption of pumping light damps the electron spin [s^-1]; 0 in the
+    dark.
+    """
     rates = {p.name: p.rate.value for p in processes if p.rate is not None}
     exchange = rates.pop(EXCHANGE, None)
-    return exchange is not None and all(exchange > other for other in rates.values())
+    return exchange is not None and all(exchange > other for other in (*rates.values(), light_damping))
 
 
-def orientation_decay(processes: Iterable[GroundProcess], nuclear_spin: float) -> tuple[GroundProcess, ...]:
+def orientation_decay(
+    processes: Iterable[GroundProcess], nuclear_spin: float, light_damping: float = 0.0
+) -> tuple[GroundProcess, ...]:
     """The processes with their rates turned into decay rates of the longitudinal orientation <F_z> [s^-1].
 
     Those on the electron by `observable`, in the form that `exchange_is_fast` decides; those on the whole atom as they
     are; spin exchange conserves <F_z> and keeps its own rate (``destroys`` False).
 
-    Parameters: ``nuclear_spin`` I [hbar]. Notes say what was done; errors scale along.
+    Parameters: ``nuclear_spin`` I [hbar]; ``light_damping`` as `exchange_is_fast` [s^-1]. Notes say what was done;
+    errors scale along.
     """
     processes = tuple(processes)
-    fast = exchange_is_fast(processes)
+    fast = exchange_is_fast(processes, light_damping)
     factor = _slowing(nuclear_spin, fast)
     word = "1/q of a spin temperature, spin exchange is fastest" if fast else "slow eigenrate, spin exchange is slow"
     turned = []

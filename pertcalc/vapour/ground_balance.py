@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterable
+from collections.abc import Callable, Iterable
 from dataclasses import dataclass, replace
 
 from pertcalc.species import COMPUTED, Alkali, Isotope, Sourced
@@ -23,7 +23,7 @@ from pertcalc.vapour.ground_spin import exchange_broadening
 from pertcalc.vapour.hanle_fields import HanleField, ground_hanle_field
 from pertcalc.vapour.pairs import PAIRS
 from pertcalc.vapour.process import weakest_mark
-from pertcalc.vapour.pumping import Pumping
+from pertcalc.vapour.pump_light import PumpLight
 from pertcalc.vapour.question import Question
 from pertcalc.vapour.spin_destruction import BY_GAS, EXCHANGE
 
@@ -33,6 +33,13 @@ _OF_THE_GAS = (BY_GAS, PAIRS)
 _REACH = 1e6
 # Step in ln n of the slope there.
 _STEP = 1e-3
+# The limits of the treatment that switch with the gas density, as `forms_at` names them.
+FAST_EXCHANGE = "spin exchange is fastest"
+FREE_PAIRS = "bound pairs act on the electron alone"
+RESOLVING = "the light resolves the ground hyperfine structure"
+
+# The pumping light at the gas density of the cell times a factor [1]; None in the dark.
+LightAt = Callable[[float], PumpLight | None]
 
 
 @dataclass(frozen=True, slots=True)
@@ -103,7 +110,7 @@ def ground_balance(
     density: Sourced,
     diffusion_nD: Sourced | None,
     sticking: tuple[Sourced, Sourced] | None,
-    beam: Pumping | None,
+    light_at: LightAt,
 ) -> GroundBalance:
     """Every process of the ground level of an isotope, its Hanle fields and crossovers.
 
@@ -117,8 +124,8 @@ def ground_balance(
         Diffusion coefficient times gas density [cm^-1 s^-1].
     sticking : tuple of Sourced or None
         Equilibrium constant [cm^3] and rotation N [1] of the weakly bound pairs; `pertcalc.vapour.pairs.sticking`.
-    beam : Pumping or None
-        The pumping light.
+    light_at : callable
+        ``light_at(factor)`` is the pumping light with the gas density times ``factor`` [1], None in the dark.
 
     Returns
     -------
@@ -141,9 +148,10 @@ def ground_balance(
         *(sticking or (None, None)),
     )
     processes = ground_processes(atom, isotope, around)
-    decays = orientation_decay(processes, isotope.nuclear_spin)
+    beam = light_at(1.0)
+    decays = orientation_decay(processes, isotope.nuclear_spin, _damping(beam))
     total = _total(decays)
-    fast = exchange_is_fast(processes)
+    fast = exchange_is_fast(processes, _damping(beam))
     light = None if beam is None else light_decay(beam, isotope, fast)
     hanle = _hanle(isotope, total, light, exchange := _exchange(processes, isotope))
     one_gauss = ground_hanle_field(isotope, 1.0)
@@ -170,20 +178,32 @@ def ground_balance(
         None,
         None,
     )
-    factor, error = _crossover(found)
+    factor, error = _crossover(found, light_at)
     if factor is None:
         return found
     meet = factor * question.fill.pressure_torr
     return replace(found, crossover_pressure_torr=meet, crossover_pressure_error=error)
 
 
-def light_decay(beam: Pumping, isotope: Isotope, fast_exchange: bool) -> Sourced:
+def light_decay(light: PumpLight, isotope: Isotope, fast_exchange: bool) -> Sourced:
     """Rate at which absorption takes <F_z> away [s^-1]: the damping of the electron spin, slowed by the nucleus.
 
     Absorption and the mixing of a short-lived level leave the nucleus alone, like a collision: see `ground.observable`.
+    Light that resolves the hyperfine structure of the ground level takes whole atoms of one F: not slowed.
     """
-    damping = observable(beam.spin.damping, isotope.nuclear_spin, fast_exchange)
-    return Sourced(damping, "s^-1", "absorption of the pumping light", COMPUTED, _scaled(beam.rate, damping))
+    rate = light.beam.rate
+    if light.resolves:
+        damping, words = light.damping, "it resolves the ground hyperfine structure and takes whole atoms of one F"
+        words += ": not slowed by the nucleus, mean over both F"
+    else:
+        damping = observable(light.damping, isotope.nuclear_spin, fast_exchange)
+        words = f"damping of the electron spin, slowed by the nucleus: x {damping / light.damping:.4g}"
+    source = f"absorption of the pumping light; {words}; {rate.source}"
+    return Sourced(damping, "s^-1", source, weakest_mark((COMPUTED, rate.mark)), _scaled(rate, damping))
+
+
+def _damping(light: PumpLight | None) -> float:
+    return 0.0 if light is None else light.damping
 
 
 def _rate(process: GroundProcess) -> float:
@@ -236,16 +256,33 @@ def _hanle(
     return found
 
 
-def decays_at(balance: GroundBalance, factor: float) -> tuple[GroundProcess, ...]:
-    """The decays of <F_z> [s^-1] with the gas density of the cell times ``factor`` [1], all else unchanged."""
+def _processes_at(balance: GroundBalance, factor: float) -> tuple[GroundProcess, ...]:
     around = balance.around
     if around.gas_density_cm3 is None:
-        return balance.decays
+        return balance.processes
     thinner = replace(around, gas_density_cm3=factor * around.gas_density_cm3)
-    return orientation_decay(ground_processes(balance.atom, balance.isotope, thinner), balance.isotope.nuclear_spin)
+    return ground_processes(balance.atom, balance.isotope, thinner)
 
 
-def _crossover(balance: GroundBalance) -> tuple[float | None, float | None]:
+def decays_at(balance: GroundBalance, factor: float, light: PumpLight | None) -> tuple[GroundProcess, ...]:
+    """The decays of <F_z> [s^-1] with the gas density of the cell times ``factor`` [1], all else unchanged.
+
+    ``light`` the pumping light at that density, None in the dark: it can break a spin temperature.
+    """
+    return orientation_decay(_processes_at(balance, factor), balance.isotope.nuclear_spin, _damping(light))
+
+
+def forms_at(balance: GroundBalance, factor: float, light: PumpLight | None) -> dict[str, bool]:
+    """Which limits hold at a gas density: FAST_EXCHANGE, FREE_PAIRS, RESOLVING; arguments as `decays_at`."""
+    found = _processes_at(balance, factor)
+    return {
+        FAST_EXCHANGE: exchange_is_fast(found, _damping(light)),
+        FREE_PAIRS: any(one.name == PAIRS and one.on_electron for one in found),
+        RESOLVING: light is not None and light.resolves,
+    }
+
+
+def _crossover(balance: GroundBalance, light_at: LightAt) -> tuple[float | None, float | None]:
     """Factor of the gas density at which wall and transit relax as much as the gas does, and its relative error.
 
     None if they never meet. The error: those of both sides over the slope d ln(walls/gas)/d ln n.
@@ -255,7 +292,9 @@ def _crossover(balance: GroundBalance) -> tuple[float | None, float | None]:
     from scipy.optimize import brentq
 
     def sides(log_factor: float) -> list[Sourced | None]:
-        known = {p.name: p.rate for p in decays_at(balance, math.exp(log_factor)) if p.destroys and p.rate is not None}
+        factor = math.exp(log_factor)
+        decays = decays_at(balance, factor, light_at(factor))
+        known = {p.name: p.rate for p in decays if p.destroys and p.rate is not None}
         return [_sum((known[n] for n in names if n in known), "") for names in ((WALL, TRANSIT), _OF_THE_GAS)]
 
     def gap(log_factor: float) -> float:

@@ -7,16 +7,17 @@ from __future__ import annotations
 
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass, replace
+from functools import partial
 
 from pertcalc import __version__
 from pertcalc.rates import collision_rates
 from pertcalc.results import CollisionRates
 from pertcalc.species import COMPUTED, SPECIES_GASES, UPPER_LEVEL, Alkali, Isotope, Sourced, alkali
-from pertcalc.vapour.absorption import AbsorptionLine, absorption_line
+from pertcalc.vapour.absorption import AbsorptionLine
 from pertcalc.vapour.cell import coating_warning
 from pertcalc.vapour.density import VapourDensity, alkali_density
 from pertcalc.vapour.diffusion import Diffusion, diffusion
-from pertcalc.vapour.excited import ModelRates, RankBalance, coefficient_error, model_rates, rank_balance
+from pertcalc.vapour.excited import ModelRates, RankBalance, coefficient, coefficient_error, model_rates, rank_balance
 from pertcalc.vapour.fill import IMPACT_LIMIT, hanle_field_G, impact_parameter
 from pertcalc.vapour.ground_balance import GroundBalance, ground_balance
 from pertcalc.vapour.ground_spin import slowing_down
@@ -24,7 +25,8 @@ from pertcalc.vapour.hanle import GroundHanle, HanleCurves, field_grid, ground_h
 from pertcalc.vapour.hanle_fields import CLEAR, HanleField, Regime, field_limits, hanle_fields, regime
 from pertcalc.vapour.level_rates import J_OF, P_LEVELS, LevelRates, free_rates, level_rates
 from pertcalc.vapour.pairs import sticking
-from pertcalc.vapour.pumping import Pumping, pumping, pumping_kind, spin_coefficients, surviving_orientation
+from pertcalc.vapour.pump_light import line_in_gas, pump_light
+from pertcalc.vapour.pumping import Pumping, pumping_kind, spin_coefficients, surviving_orientation
 from pertcalc.vapour.question import Question
 from pertcalc.vapour.scattering import Polarisability, scattering_polarisability
 from pertcalc.vapour.spin_destruction import bound_pair
@@ -115,11 +117,15 @@ def verdict(question: Question, progress: Progress | None = None) -> Verdict:
     electronic = free_rates(atom) if rates is None else level_rates(atom, rates, n)
     isotope = max(atom.isotopes, key=lambda one: one.abundance.value)
     regimes = _regimes(isotope, electronic, fill.field_G)
-    lines = {line: _line(atom, line, T, rates, n) for line in UPPER_LEVEL}
+    lines = {line: line_in_gas(atom, line, question, rates) for line in UPPER_LEVEL}
     duration = None if rates is None else _duration_s(rates, T)
-    overlap = {} if rates is None else {line: n * _fwhm(rates, line) * (duration or 0.0) for line in UPPER_LEVEL}
+    overlap = {}
+    if rates is not None and duration is not None:
+        overlap = {line: n * coefficient(rates, "fwhm", line) * duration for line in UPPER_LEVEL}
     spread = _diffusion(question)
-    beam = _pumping(question, atom, isotope, lines, electronic, rates)
+    light_at = partial(pump_light, question, isotope, lines, rates)
+    here = light_at()
+    beam = None if here is None else here.beam
     trapped = _trapping(question, lines, vapour)
     ground = ground_balance(
         question,
@@ -128,7 +134,7 @@ def verdict(question: Question, progress: Progress | None = None) -> Verdict:
         vapour.density_cm3,
         None if spread is None else spread.chosen,
         _sticking(question),
-        beam,
+        light_at,
     )
     return Verdict(
         question,
@@ -153,15 +159,9 @@ def verdict(question: Question, progress: Progress | None = None) -> Verdict:
     )
 
 
-def _fwhm(rates: CollisionRates, line: str) -> float:
-    values = rates.fwhm[line].values
-    assert values is not None  # the two close-coupling methods know every width
-    return float(values[0])
-
-
 def _duration_s(rates: CollisionRates, temperature_K: float) -> float:
     """Duration of the collisions that make the width of D2 [s], b/vbar (see fill.impact_parameter)."""
-    width = _fwhm(rates, "D2")
+    width = coefficient(rates, "fwhm", "D2")
     return impact_parameter(width, temperature_K, rates.reduced_mass, 1.0) / width
 
 
@@ -272,18 +272,7 @@ def _model(atom: Alkali, line: str, electronic: LevelRates, rates: CollisionRate
         "width": coefficient_error(rates, "fwhm", line),
         "gamma_I": coefficient_error(rates, "transfer", level),
     } | {f"loss_{K}": coefficient_error(rates, "multipole_loss", level, K) for K in electronic.loss[level] if K}
-    return model_rates(atom, line, electronic, n * _fwhm(rates, line), errors)
-
-
-def _line(atom: Alkali, line: str, T: float, rates: CollisionRates | None, n: float) -> AbsorptionLine:
-    if rates is None:
-        return absorption_line(atom, line, T)
-    shift = rates.shift[line].values
-    assert shift is not None
-    width, moved = n * _fwhm(rates, line), n * float(shift[0])
-    relative = [coefficient_error(rates, what, line) for what in ("fwhm", "shift")]
-    errors = [None if one is None else one * abs(value) for one, value in zip(relative, (width, moved), strict=True)]
-    return absorption_line(atom, line, T, width, moved, fwhm_error_rad_s=errors[0], shift_error_rad_s=errors[1])
+    return model_rates(atom, line, electronic, n * coefficient(rates, "fwhm", line), errors)
 
 
 def _diffusion(question: Question) -> Diffusion | None:
@@ -305,23 +294,6 @@ def _sticking(question: Question) -> tuple[Sourced, Sourced] | None:
     return sticking(
         molecule(question.alkali, question.gas, temperature=question.fill.temperature_K, curves=question.curves)
     )
-
-
-def _pumping(
-    question: Question,
-    atom: Alkali,
-    isotope: Isotope,
-    lines: Mapping[str, AbsorptionLine],
-    electronic: LevelRates,
-    rates: CollisionRates | None,
-) -> Pumping | None:
-    light = question.light
-    if light is None:
-        return None
-    q = float(slowing_down(isotope.nuclear_spin, 1.0))
-    error = None if rates is None else coefficient_error(rates, "multipole_loss", UPPER_LEVEL[light.line], 1)
-    gas = None if rates is None else electronic
-    return pumping(lines[light.line], light.beam, gas, slowing_down=q, loss_error=error)
 
 
 def _trapping(question: Question, lines: Mapping[str, AbsorptionLine], vapour: VapourDensity) -> dict[str, Trapping]:
