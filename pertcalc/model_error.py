@@ -69,7 +69,7 @@ def deformed_pair(curves: CurveSet, state: str, parameter: str, change: float) -
     ----------
     curves : CurveSet
     state, parameter : str
-        "X", "A" or "B"; "De", "Re" or "C6".
+        "X", "A" or "B"; one of `deform.MOVABLE`.
     change : float
         Relative change [1].
 
@@ -77,17 +77,33 @@ def deformed_pair(curves: CurveSet, state: str, parameter: str, change: float) -
     -------
     CollisionPair
     """
+    return moved_pair(curves, {state: {parameter: change}})
+
+
+def moved_pair(curves: CurveSet, changes: Mapping[str, Mapping[str, float]]) -> CollisionPair:
+    """The colliding pair with any parameters of its curves moved together.
+
+    Parameters
+    ----------
+    curves : CurveSet
+    changes : mapping
+        State "X", "A" or "B" to parameter (of `deform.MOVABLE`) to relative change [1].
+
+    Returns
+    -------
+    CollisionPair
+    """
     pair = pair_of(curves)
-    moved = Deformed(curves.states[state].curve, **{parameter: change})
-    curve: dict[str, Any] = {state: moved}
-    pair = replace(pair, **curve)
-    if parameter != "C6":
-        return pair
-    extra = moved.new_c6 - curves.states[state].curve.C6
-    share = {"X": -1.0, "A": 2 / 3, "B": 1 / 3}[state]
-    turn = {"X": 0.0, "A": -1.0, "B": 1.0}[state]
-    first, *rest = pair.isotropic
-    return replace(pair, isotropic=(first + share * extra, rest[0], rest[1]), anisotropy=pair.anisotropy + turn * extra)
+    moved = {state: Deformed(curves.states[state].curve, **change) for state, change in changes.items()}
+    isotropic, anisotropy = np.array(pair.isotropic), pair.anisotropy
+    for state, curve in moved.items():
+        base = curve.base
+        extra = np.subtract(curve.dispersion, (base.C6, base.C8, base.C10))
+        isotropic += {"X": -1.0, "A": 2 / 3, "B": 1 / 3}[state] * extra
+        anisotropy += {"X": 0.0, "A": -1.0, "B": 1.0}[state] * float(extra[0])
+    first, second, third = (float(value) for value in isotropic)
+    curve_of: dict[str, Any] = dict(moved)
+    return replace(pair, **curve_of, isotropic=(first, second, third), anisotropy=anisotropy)
 
 
 def curve_errors(curves: CurveSet, temperatures: Array, progress: Progress | None = None) -> dict[Key, Array]:

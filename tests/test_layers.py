@@ -20,6 +20,7 @@ LAYERS = [
     "units",  # words -> numbers
     "angular",
     "quadrature",
+    "parallel",
     "species",  # data
     "measured",
     "results",  # what is handed to the user

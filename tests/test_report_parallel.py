@@ -21,7 +21,7 @@ from pertcalc.errors import (
     PublishedCheckError,
     UnknownNameError,
 )
-from pertcalc.report.parallel import run_all, worker_pool
+from pertcalc.parallel import run_all, worker_pool
 
 ERRORS = [
     PertcalcError("plain"),

@@ -131,7 +131,12 @@ def expected_steps(paths: _Paths) -> Array:
 
 
 def scatter(
-    family: PathFamily, energy: Array, b: Array, turning_point: Array, step_factor: Array | float = 1.0
+    family: PathFamily,
+    energy: Array,
+    b: Array,
+    turning_point: Array,
+    step_factor: Array | float = 1.0,
+    chunk: int = CHUNK,
 ) -> Scattering:
     """S-matrices of the collisions (energy, b) on one family of paths.
 
@@ -142,6 +147,8 @@ def scatter(
         Kinetic energy [hartree], impact parameter [bohr], turning point [bohr].
     step_factor : ndarray, shape (n,), or float
         Multiplies the number of steps of every path [1].
+    chunk : int
+        Paths stepped together: every one takes the steps of the longest, so that a small batch wants smaller chunks.
 
     Returns
     -------
@@ -157,7 +164,7 @@ def scatter(
     paths = _Paths.of(family, energy, b, turning_point)
     # Paths of like length travel together: a chunk takes as many steps as its longest path.
     order = np.argsort(expected_steps(paths) * factor, kind="stable")
-    for some in np.array_split(order, max(1, -(-b.size // CHUNK))):
+    for some in np.array_split(order, max(1, -(-b.size // chunk))):
         S, line_phase[some], steps = _scatter_chunk(paths.some(some), factor[some])
         block_a[some], block_b[some] = S[: some.size], S[some.size :]
         exponentials += 4 * steps * some.size

@@ -17,7 +17,7 @@ from pertcalc.collisions.impact import ImpactGrid, impact_grid
 from pertcalc.collisions.multipoles import INDEX, OBSERVABLES, observables
 from pertcalc.collisions.pair import R_END, CollisionPair
 from pertcalc.collisions.paths import PathFamily
-from pertcalc.collisions.scattering import scatter
+from pertcalc.collisions.scattering import CHUNK, scatter
 
 Array = NDArray[np.float64]
 Progress = Callable[[int, int], None]
@@ -153,11 +153,11 @@ def cross_sections(
     work = {"paths": 0, "exponentials": 0}
     for done, members in enumerate(batches):
         some = [grids[i] for i in members]
-        values = _observed(family, energy[members], some, factors[members], work)
+        values = path_values(family, energy[members], some, factors[members], work)
         finer = None
         if estimate_step_error:
             quarter = [_quarter(grid) for grid in some]
-            finer = _observed(family, energy[members], quarter, factors[members] * FINER_STEPS, work)
+            finer = path_values(family, energy[members], quarter, factors[members] * FINER_STEPS, work)
         for k, i in enumerate(members):
             grid, tail = grids[i], tails(pair, float(speed[i]), grids[i].last)
             rows.append(grid.full @ values[k] + tail)
@@ -186,14 +186,31 @@ def _quarter(grid: ImpactGrid) -> ImpactGrid:
     return replace(grid, b=grid.b[used], turning_point=grid.turning_point[used], full=grid.quarter[used])
 
 
-def _observed(
-    family: PathFamily, energy: Array, grids: list[ImpactGrid], step_factor: Array, work: dict[str, int]
+def path_values(
+    family: PathFamily,
+    energy: Array,
+    grids: list[ImpactGrid],
+    step_factor: Array,
+    work: dict[str, int],
+    chunk: int = CHUNK,
 ) -> list[Array]:
-    """Observables of every path, one array (points, observables) per grid; counts into `work`."""
+    """Observables of every path of several energies, one array (points, observables) per grid [1].
+
+    Parameters
+    ----------
+    family : PathFamily
+    energy, step_factor : ndarray, shape (n,)
+        Kinetic energies [hartree] and multipliers of the number of steps [1].
+    grids : list of n ImpactGrid
+    work : dict
+        "paths" and "exponentials" are counted up.
+    chunk : int
+        Paths stepped together.
+    """
     sizes = [grid.b.size for grid in grids]
     b = np.concatenate([grid.b for grid in grids])
     turning_point = np.concatenate([grid.turning_point for grid in grids])
-    scattering = scatter(family, np.repeat(energy, sizes), b, turning_point, np.repeat(step_factor, sizes))
+    scattering = scatter(family, np.repeat(energy, sizes), b, turning_point, np.repeat(step_factor, sizes), chunk)
     work["paths"] += b.size
     work["exponentials"] += scattering.exponentials
     return np.split(observables(scattering), np.cumsum(sizes)[:-1])

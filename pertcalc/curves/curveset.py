@@ -30,12 +30,16 @@ class Source:
 
 @dataclass(frozen=True, slots=True)
 class StateCurve:
-    """One state: its curve (atomic units), source, relative uncertainties (De, Re, C6, C8, C10) and mark."""
+    """One state: its curve (atomic units), source, relative uncertainties (De, Re, C6, C8, C10, wall) and mark.
+
+    ``correlation`` holds the coefficients [1] of pairs of those errors, "De_Re" and so on; absent means independent.
+    """
 
     curve: Curve
     source: Source
     uncertainty: dict[str, float] = field(default_factory=dict)
     form: str = ""
+    correlation: dict[str, float] = field(default_factory=dict)
 
     @property
     def mark(self) -> str:

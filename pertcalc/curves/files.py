@@ -16,6 +16,7 @@ from pathlib import Path
 from typing import Any
 
 from pertcalc.curves.build import BUILDERS, StateFields, build, read_limited, reason
+from pertcalc.curves.correlation import read_correlation
 from pertcalc.curves.curveset import STATES, STATUS_MARKS, CurveSet, Source, StateCurve
 from pertcalc.curves.schema import Table
 from pertcalc.errors import DataFileError, InputError
@@ -24,7 +25,7 @@ from pertcalc.species import ALKALIS, SPECIES_GASES, alkali, noble_gas
 # Dotted keys of more parts than this are refused before parsing: the standard parser spends time and memory with their
 # square. The pattern itself is linear: it starts at word beginnings only and never gives a character back.
 _LONG_KEY = re.compile(r"""(?<![\w-])(?:(?:[\w-]++|"(?:[^"\\\n]|\\.)*+"|'[^'\n]*+')[ \t]*+\.[ \t]*+){17}""")
-UNCERTAINTY_KEYS = ("De", "Re", "C6", "C8", "C10")
+UNCERTAINTY_KEYS = ("De", "Re", "C6", "C8", "C10", "wall")
 
 
 def load(path: str | PathLike[str]) -> CurveSet:
@@ -199,7 +200,7 @@ def _states(top: Table, folder: Path) -> tuple[dict[str, StateCurve], list[bytes
 def _state(fields: Table, folder: Path) -> tuple[StateCurve | None, bytes]:
     form = fields.text("form", f"name one of {', '.join(BUILDERS)}", tuple(BUILDERS))
     source = _source(fields)
-    stated = _uncertainty(fields)
+    stated, together = _uncertainty(fields)
     if form is None:
         # Without a form nobody can say which other keys belong here.
         return None, b""
@@ -208,7 +209,9 @@ def _state(fields: Table, folder: Path) -> tuple[StateCurve | None, bytes]:
     fields.finish()
     if curve is None or source is None:
         return None, state.table_bytes
-    return StateCurve(curve, source, {**state.uncertainty, **stated}, form), state.table_bytes
+    uncertainty = {**state.uncertainty, **stated}
+    correlation = {} if together is None else read_correlation(together, uncertainty)
+    return StateCurve(curve, source, uncertainty, form, correlation), state.table_bytes
 
 
 def _source(fields: Table) -> Source | None:
@@ -222,13 +225,15 @@ def _source(fields: Table) -> Source | None:
     return None if cite is None or status is None else Source(cite, status, where or "", note or "")
 
 
-def _uncertainty(fields: Table) -> dict[str, float]:
+def _uncertainty(fields: Table) -> tuple[dict[str, float], Table | None]:
+    """Stated relative errors, and the table of their correlations, to be read once all of them are known."""
     section = fields.table("uncertainty")
     if section is None:
-        return {}
+        return {}, None
     found = {key: section.number(key, "relative, 0.1 = 10 %", high=100.0, closed=True) for key in UNCERTAINTY_KEYS}
+    together = section.table("correlation")
     section.finish()
-    return {key: value for key, value in found.items() if value is not None}
+    return {key: value for key, value in found.items() if value is not None}, together
 
 
 def for_pair(curves: CurveSet, alkali_symbol: str, gas_symbol: str) -> CurveSet:

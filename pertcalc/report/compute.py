@@ -16,8 +16,8 @@ from pertcalc import __version__
 from pertcalc.curves.curveset import CurveSet
 from pertcalc.curves.files import load_default
 from pertcalc.errors import OutOfRangeError, PertcalcError
+from pertcalc.parallel import Outcome, Progress, run_all, worker_pool
 from pertcalc.report.comparison import Comparison, compare, known_measurements
-from pertcalc.report.parallel import Outcome, Progress, run_all, worker_pool
 from pertcalc.report.request import Request
 from pertcalc.results import Coefficient, CollisionRates
 from pertcalc.species import SPECIES_GASES, alkali, noble_gas

@@ -11,9 +11,9 @@ from pertcalc import __version__
 from pertcalc.errors import PertcalcError, PublishedCheckError, UnknownNameError
 from pertcalc.measured import QUANTITIES, Measurement, measurements
 from pertcalc.names import METHODS
+from pertcalc.parallel import Outcome, Progress, run_all, worker_pool
 from pertcalc.report.comparison import compare
 from pertcalc.report.compute import rates_of_gas
-from pertcalc.report.parallel import Outcome, Progress, run_all, worker_pool
 from pertcalc.results import CollisionRates
 from pertcalc.species import ALKALIS, READ, SPECIES_GASES, alkali, noble_gas
 from pertcalc.validation.check import Check, failure_message, failures

@@ -1,4 +1,4 @@
-"""One task per gas, in this process or in a pool, where one failure or an interrupt loses nothing that is finished."""
+"""One task per key (a gas, a pair, a sample), here or in a pool; one failure or an interrupt loses nothing finished."""
 
 from __future__ import annotations
 
