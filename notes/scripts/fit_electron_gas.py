@@ -43,8 +43,8 @@ GIVEN = {  # beta, cut-off of the two given sets
 }
 GIVEN_HELIUM = {"calibrated": (0.33, 0.70), "soft": (0.27, 0.70)}  # gamma of the s term, cut-off
 GIVEN_SOURCE = {
-    "calibrated": "range and cut-off tuned to the X and A wells of Na with the gas; strength from the scattering length",
-    "soft": "softer range, nearer to the blue satellites of the caesium D2 line; strength from the scattering length",
+    "calibrated": "range and cut-off tuned to the X and A wells of Na with the gas; strength: scattering length",
+    "soft": "softer range, nearer to the blue satellites of the caesium D2 line; strength: scattering length",
 }
 
 
@@ -60,8 +60,8 @@ def potential(gas: str, p: Sequence[float]) -> GasElectron:
     record = noble_gas(gas)
     terms = (Separable(0, float(p[3]), float(p[2])), Separable(1, float(p[5]), float(p[4])))
     return GasElectron(
-        gas, "l-dependent", record.polarizability_au.value, CUTOFF[gas], float(p[0]), float(p[1]), terms, 0.0, "", "", "",
-        record.quadrupole_polarizability_au.value, round(beta_1(gas), 3),
+        gas, "l-dependent", record.polarizability_au.value, CUTOFF[gas], float(p[0]), float(p[1]), terms, 0.0,
+        "", "", "", record.quadrupole_polarizability_au.value, round(beta_1(gas), 3),
     )  # fmt: skip
 
 
@@ -106,7 +106,8 @@ def fit(gas: str) -> GasElectron:
     assert not any(bound_states(model, l) for l in range(4)), f"{gas}: the fit binds an electron"
     left = residuals(model, data)
     report(gas, model, data)
-    words = f"{len(data)} published numbers FROM MEMORY: rms {np.sqrt(np.mean(left**2)):.2f}, largest {np.max(abs(left)):.1f} of their errors"
+    size = f"rms {np.sqrt(np.mean(left**2)):.2f}, largest {np.max(abs(left)):.1f}"
+    words = f"{len(data)} published numbers FROM MEMORY: {size} of their errors"
     source = "least squares to published s, p, d phase shifts, scattering length and cross sections (phase_shifts.csv)"
     return replace(
         model,
@@ -159,7 +160,7 @@ def toml(model: GasElectron) -> str:
 def main(output: Path) -> None:
     """Fit, write, report."""
     tables = [fit(gas) for gas in GASES] + [given(gas, model) for model in GIVEN for gas in GASES]
-    header = "# Made by notes/scripts/fit_electron_gas.py; notes/electron-gas.md explains it. Atomic units. Do not edit by hand.\n"
+    header = "# Made by notes/scripts/fit_electron_gas.py (notes/electron-gas.md). Atomic units. Do not edit by hand.\n"
     output.write_text("\n".join([header, *map(toml, tables)]), encoding="utf-8")
 
 

@@ -71,7 +71,7 @@ def predicted(gas: Scatterer, data: Sequence[ScatteringDatum]) -> tuple[Array, A
     -------
     value, energy : ndarray, shape (n,)
         In the unit of each datum [bohr, rad, angstrom^2] and at what energy [eV]; only a minimum has its own energy.
-        Phase shifts are those between -pi/2 - 0.6 and pi/2 - 0.6 + ..., the branch that starts at zero at zero energy.
+        s phases are taken between 0.8 - pi and 0.8, the branch that reaches zero at zero energy.
     """
     value, energy = np.empty(len(data)), np.array([one.energy_eV for one in data])
     for i, one in enumerate(data):
