@@ -23,7 +23,7 @@ from pertcalc.one_electron.scattering_data import ScatteringDatum, predicted, sc
 from pertcalc.species import GASES, noble_gas
 
 OUTPUT = Path(__file__).parents[2] / "pertcalc" / "data" / "one_electron" / "electron_gas.toml"
-# Cut-off radius [bohr]: given. The cost of the fit changes by less than a fifth between 0.7 and 1.2 of these.
+# Cut-off radius [bohr]: given; the fit hardly feels it (notes/electron-gas.md).
 CUTOFF = {"He": 1.3, "Ne": 1.5, "Ar": 2.2, "Kr": 2.2, "Xe": 2.5}
 # Start of strength B, beta, gamma_0, S_0, gamma_1, S_1; B = None where no local term is wanted.
 START = {
@@ -55,7 +55,7 @@ def beta_1(gas: str) -> float:
     return 0.5 * alpha / (4.0 * record.C6_homonuclear_au.value / (3.0 * alpha**2))
 
 
-def potential(gas: str, p: Sequence[float]) -> GasElectron:
+def potential(gas: str, p: Sequence[float] | NDArray[np.float64]) -> GasElectron:
     """Potential of p = B, beta, gamma_0, S_0, gamma_1, S_1."""
     record = noble_gas(gas)
     terms = (Separable(0, float(p[3]), float(p[2])), Separable(1, float(p[5]), float(p[4])))

@@ -73,31 +73,25 @@ def predicted(gas: Scatterer, data: Sequence[ScatteringDatum]) -> tuple[Array, A
         In the unit of each datum [bohr, rad, angstrom^2] and at what energy [eV]; only a minimum has its own energy.
         s phases are taken between 0.8 - pi and 0.8, the branch that reaches zero at zero energy.
     """
+    groups = [one.energy_eV * (AROUND_MINIMUM if one.quantity.endswith("_minimum") else np.ones(1)) for one in data]
+    ends = np.cumsum([len(group) for group in groups])
+    E = np.maximum(np.concatenate(groups), 1e-6) / constants.HARTREE_EV  # the scattering length sits at 0
+    curves = dict(zip(("elastic", "momentum_transfer"), cross_sections(gas, E, SOLVED), strict=True))
+    curves = {key: sigma * constants.BOHR2_ANGSTROM2 for key, sigma in curves.items()}
+    curves |= {f"delta_{l}": phase_shifts(gas, E, l) for l in range(SOLVED)}
+    curves["delta_0"] = np.where(curves["delta_0"] > 0.8, curves["delta_0"] - np.pi, curves["delta_0"])
     value, energy = np.empty(len(data)), np.array([one.energy_eV for one in data])
-    for i, one in enumerate(data):
+    for i, (one, end, group) in enumerate(zip(data, ends, groups, strict=True)):
         if one.quantity == "scattering_length":
             value[i] = scattering_length(gas)
-        elif one.quantity.startswith("delta_"):
-            value[i] = _phase(gas, one.energy_eV, int(one.quantity[-1]))
-        elif one.quantity.endswith("_minimum"):
-            E = one.energy_eV * AROUND_MINIMUM
-            c = np.polyfit(AROUND_MINIMUM, _cross_section(gas, E, one.quantity.removesuffix("_minimum")), 2)
+            continue
+        found = curves[one.quantity.removesuffix("_minimum")][end - len(group) : end]
+        value[i] = found[0]
+        if len(group) > 1:
+            c = np.polyfit(AROUND_MINIMUM, found, 2)
             at = float(np.clip(-0.5 * c[1] / c[0], 0.5, 2.0))
             value[i], energy[i] = np.polyval(c, np.clip(at, 0.8, 1.2)), at * one.energy_eV
-        else:
-            value[i] = _cross_section(gas, np.array([one.energy_eV]), one.quantity)[0]
     return value, energy
-
-
-def _phase(gas: Scatterer, energy_eV: float, l: int) -> float:
-    """Phase on the branch that is continuous down to zero energy; repulsive s waves go below -pi/2."""
-    delta = float(phase_shifts(gas, energy_eV / constants.HARTREE_EV, l))
-    return delta - np.pi if l == 0 and delta > 0.8 else delta
-
-
-def _cross_section(gas: Scatterer, energy_eV: Array, which: str) -> Array:
-    elastic, transfer = cross_sections(gas, energy_eV / constants.HARTREE_EV, SOLVED)
-    return (elastic if which == "elastic" else transfer) * constants.BOHR2_ANGSTROM2
 
 
 @cache
