@@ -124,11 +124,9 @@ def alkali_density(alkali: str, temperature_K: float) -> VapourDensity:
             f"formula for {default.alkali} as {default.warn_above_K:g}/{default.high_K:g} K, so 5 % may not hold here."
         )
     if spread > 2 * (default.error_relative or 0.0):
-        warnings.append(
-            f"published vapour-pressure formulas of {default.alkali} differ: "
-            + ", ".join(f"{n / densities[0]:.2f}" for n in densities[1:])
-            + " of the value given."
-        )
+        times = " and ".join(f"{n / densities[0]:.2f}" for n in densities[1:])
+        formula = "other published formulas give" if len(densities) > 2 else "another published formula gives"
+        warnings.append(f"{default.alkali} vapour: {formula} {times} times this density.")
     error = math.hypot(default.error_relative or 0.0, spread)
     return _evaluated(default, temperature_K, error, others, tuple(warnings))
 
@@ -145,8 +143,7 @@ def _default_at(defaults: list[Formula], temperature_K: float) -> Formula:
             low,
             high,
             "K",
-            "No published vapour-pressure formula of the data covers it: choose a temperature inside, "
-            "or measure the density and give it directly.",
+            "The vapour-pressure formula does not hold there: choose a temperature inside.",
         )
     solid = next(one for one in defaults if one.phase == SOLID)
     return solid if temperature_K < solid.high_K else next(one for one in defaults if one.phase == LIQUID)
