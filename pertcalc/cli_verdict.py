@@ -77,7 +77,8 @@ def verdict(
     """What rules the polarisation of each level of ALKALI in GAS: collisions, field, light, walls or free decay.
 
     Every rate of every level with its error and origin, who wins and by what factor, and the pressure and the field at
-    which the answer changes. --csv gives Gamma_R, Gamma_I, Gamma_E, D1, D2 for a model of polarised lines.
+    which the answer changes. --csv gives Gamma_R, Gamma_I, Gamma_E, D1, D2 for a model of polarised lines (warnings
+    on stderr).
 
     \b
     Examples:
@@ -119,6 +120,9 @@ def verdict(
     with progress_bar(f"{alkali} + {chosen}") as progress:
         found = compute(question, progress)
     _draw(found, plot, plot_hanle)
+    if as_csv:  # rows have no place for them
+        for warning in found.warnings:
+            click.echo(f"warning: {warning}", err=True)
     deliver(_rendered(found, as_json, as_csv), output, force)
 
 

@@ -10,6 +10,7 @@ import io
 import json
 import math
 import re
+from dataclasses import replace
 from typing import Any
 
 import pytest
@@ -74,7 +75,7 @@ def as_json(words: str) -> dict[str, Any]:
 
 def rows(words: str) -> dict[str, dict[str, str]]:
     result = run(*spoken(words), "--csv")
-    assert (result.exit_code, result.stderr) == (0, "")
+    assert result.exit_code == 0 and all(line.startswith("warning: ") for line in result.stderr.splitlines())
     return {row["line"]: row for row in csv.DictReader(io.StringIO(result.stdout))}
 
 
@@ -115,6 +116,10 @@ def test_json_follows_the_contract(words):
         assert list(found["levels"][level]) == list(ranks)
         for one in found["levels"][level].values():
             assert one["radiative_s"] > 0 and one["hanle_field_G"] >= one["hanle_free_field_G"] > 0
+            assert one["larmor_mark"] == one["g_factor"]["mark"] and one["g_factor"]["source"]
+            for field in ("hanle_field", "crossover_field"):
+                low, high = one[f"{field}_low_G"], one[f"{field}_high_G"]
+                assert 0 < low <= high == pytest.approx(one[f"{field}_G"], rel=1e-12)
             assert one["dominant"] in (DECAY, COLLISIONS, FIELD)
             effects = {DECAY: one["radiative_s"], COLLISIONS: one["collisional_s"], FIELD: one["larmor_rad_s"]}
             assert one["dominant"] == max(effects, key=effects.get)
@@ -152,8 +157,11 @@ def test_light_shows_in_the_ground_level_only_when_given():
     dark, lit = as_json("Cs Ar"), as_json("Cs Ar --power 1_mW --beam-diameter 5_mm")
     assert dark["pumping"] is None and dark["levels"]["S1/2"]["pumping_s"] is None
     assert lit["pumping"]["line"] == "D1" and lit["levels"]["S1/2"]["pumping_s"]["value"] > 0
-    fields = lit["levels"]["S1/2"]["hanle_field_G"]
+    fields = lit["levels"]["S1/2"]["hanle_fields_G"]
     assert fields["relaxation + pumping"] > fields["relaxation"]
+    # One number: all damping along the beam, exchange (which only dephases) left out.
+    assert lit["levels"]["S1/2"]["hanle_field_G"] == fields["relaxation + pumping"]
+    assert dark["levels"]["S1/2"]["hanle_field_G"] == dark["levels"]["S1/2"]["hanle_fields_G"]["relaxation"]
     assert "transit through the beam" in [one["name"] for one in lit["levels"]["S1/2"]["processes"]]
     assert dark["levels"]["P3/2"] == lit["levels"]["P3/2"]
 
@@ -176,7 +184,7 @@ def test_csv_holds_the_rates_of_models_of_polarised_lines(words):
         assert inelastic + elastic == pytest.approx(width, rel=1e-9)
         for K, one in found["levels"][level].items():
             assert float(row[f"D{K}"]) + inelastic == pytest.approx(one["collisional_s"], rel=1e-9)
-        assert float(row["W2"]) == found["W2"][line]
+        assert float(row["W2"]) == found["W2"][line] and row["W2_mark"] == found["scattering"][line]["W2"]["mark"]
     assert table["D1"]["D2"] == "" and table["D2"]["D3"] != ""
     assert table["D1"]["method"] == ("" if rates is None else "semiclassical")
 
@@ -215,7 +223,7 @@ def test_text_answers_every_question_of_the_job():
         "G the field does",
         "s^-1",
         "rad/s",
-        "g_F of F=5, 133Cs",
+        "g_F = 0.4002 of F=5",
         "FROM MEMORY",
         "READ",
         "COMPUTED",
@@ -261,12 +269,14 @@ def test_processes_of_one_size_are_said_to_be_equal():
 
 SENTENCES = [
     ("Cs Ar --field 0_G", "P3/2", r"^P3/2: collisions rule the alignment \(K=2\), 24 times radiative decay; "
-     r"below 0\.8\d+ \+- 0\.16 Torr radiative decay does, above \d+ G the field does\.$"),
+     r"below 0\.8\d+ \+- 0\.16 Torr radiative decay does, above \d+ to \d+ G the field does\.$"),
     ("Cs none --field 0_G", "P1/2", r"^P1/2: radiative decay rules the orientation \(K=1\), alone; above 39\.3 G the"),
-    ("Cs none --field 1000_G", "P3/2", r"^P3/2: field rules the alignment \(K=2\), 3\d\d times radiative decay; "
+    ("Cs none --field 1000_G", "P3/2", r"^P3/2: the field rules the alignment \(K=2\), 3\d\d times radiative decay; "
      r"below 9\.34 G radiative decay does\.$"),
-    ("Cs Ar --field 1e4_G", "P3/2", r"^P3/2: field rules the alignment \(K=2\), 1\d\d times collisions; above \d+ \+- "
-     r"\d+ Torr collisions do, below \d+ G collisions do\.$"),
+    ("Cs Ar --field 1e4_G", "P3/2", r"^P3/2: the field rules the alignment \(K=2\), 1\d\d times collisions; above \d+ "
+     r"\+- \d+ Torr \(beyond the range of the treatment\) collisions do, below \d+ to \d+ G collisions do\.$"),
+    ("Cs Ar --field 80_G", "P3/2", r"below [\d.]+ \+- [\d.]+ Torr the field does,"),
+    ("Cs none --field 12_G", "P3/2", r"^P3/2: the field and radiative decay weigh about equally on the alignment"),
     ("Cs He --pressure 4_Torr", "P3/2", r"^P3/2: collisions and radiative decay weigh about equally on the alignment"),
 ]  # fmt: skip
 
@@ -288,7 +298,7 @@ def test_the_field_across_the_ground_level_has_its_own_scale():
 
 WARNED = [
     ("Li Ar --field 1_T", "the Zeeman energy is 1.4 of the fine structure of Li"),
-    ("Cs Ar --temperature 130_degC", "along the beam: rates at the entrance do not hold at the far end"),
+    ("Cs Ar --temperature 130_degC", "along the beam (rates at the entrance do not hold at the far end)"),
     ("Cs Xe --pressure 5_atm", "collisions overlap, the impact and binary assumptions fail"),
     ("Cs none --wall coated --temperature 100_degC", "An alkane coating melts"),
     ("Cs none --power 1_W --beam-diameter 1_mm", "saturat"),
@@ -300,6 +310,91 @@ def test_doubtful_conditions_are_warned_about_and_answered(words, warning):
     assert any(warning in one for one in as_json(words)["warnings"])
     text = flat(run(*spoken(words)).stdout)
     assert warning in text and "== Warnings" in text
+
+
+def test_csv_says_its_warnings_on_stderr_one_line_each():
+    words = ("Cs", "Ar", "--temperature", "130 degC")
+    result, warnings = run(*words, "--csv"), as_json("Cs Ar --temperature 130_degC")["warnings"]
+    assert warnings and result.stderr.splitlines() == [f"warning: {one}" for one in warnings]
+    assert "warning" not in result.stdout
+
+
+def test_trapping_takes_one_line_per_line_and_one_explanation():
+    warnings = as_json("Cs none --temperature 130_degC")["warnings"]
+    lines = [one for one in warnings if "optical depth" in one]
+    assert [one[:3] for one in lines] == ["D1:", "D2:"] and all("needs a quenching gas" in one for one in lines)
+    (explained,) = [one for one in warnings if one.startswith("Radiation trapping")]
+    assert warnings.index(explained) > warnings.index(lines[1])
+    text = run("Cs", "none", "--temperature", "130 degC").stdout
+    assert "quenching gas" in text and "to pump on it" in text
+    # Thick along the beam, thin to the wall: pumping needs no quenching gas.
+    text = flat(run("Cs", "Ar", "--temperature", "35 degC", "--cell", "cylinder 2 mm x 100 mm").stdout)
+    assert "along the beam" in text and "needs a quenching gas" not in text and "not needed" in text
+
+
+def test_a_range_stands_where_neither_g_factor_holds():
+    """Cs P3/2, I = 7/2: g_J/g_F = F/J = 10/3."""
+    found = as_json("Cs Ar")
+    assert found["hyperfine"]["P3/2"]["g_factor"] is None and found["hyperfine"]["P1/2"]["g_factor"] == "g_F"
+    one = found["levels"]["P3/2"]["2"]
+    assert one["hanle_field_high_G"] / one["hanle_field_low_G"] == pytest.approx(10 / 3, rel=1e-9)
+    assert one["crossover_field_high_G"] / one["crossover_field_low_G"] == pytest.approx(10 / 3, rel=1e-9)
+    text = flat(run("Cs", "Ar").stdout)
+    assert f"-> {one['hanle_field_low_G']:.0f} to {one['hanle_field_high_G']:.0f} " in text
+    assert "neither g_J = 1.334 nor g_F = 0.4002 of F=5 [" in text and "see the curve" not in text
+
+
+def test_whose_rank_it_is_is_said_with_its_reason():
+    weak = flat(run("Na", "Ar", "--pressure", "1000 Torr").stdout)
+    assert "23Na unresolved within decay and collisions, so rank K is electronic even in this weak field" in weak
+    strong = flat(run("Cs", "none", "--field", "1 T").stdout)
+    assert "nuclear spin of 133Cs decoupled in this field, so rank K is electronic, with g_J = 1.334 [" in strong
+
+
+def test_a_crossover_pressure_says_what_it_is_worth(monkeypatch):
+    """Past the pressure where collisions overlap, or with an error larger than itself, it is no plain number."""
+    strong = as_json("Cs Ar --field 1e4_G")
+    assert strong["levels"]["P3/2"]["2"]["crossover_pressure_caveats"] == ["beyond the range of the treatment"]
+    assert "! beyond the range of the treatment: collisions overlap above" in run("Cs", "Ar", "--field", "1 T").stdout
+    assert as_json("Cs Ar")["levels"]["P3/2"]["2"]["crossover_pressure_caveats"] == []
+
+    def vague(*args: Any, **named: Any):
+        rates = fake_rates(*args, **named)
+        loss = rates.multipole_loss["P1/2"][1]
+        loss = replace(loss, model_error=loss.model_error * 10)
+        return replace(rates, multipole_loss=dict(rates.multipole_loss, **{"P1/2": {1: loss}}))
+
+    monkeypatch.setattr(module, "collision_rates", vague)
+    found, text = as_json("Cs Ar"), run("Cs", "Ar").stdout
+    assert found["levels"]["P1/2"]["1"]["crossover_pressure_caveats"] == ["order of magnitude only"]
+    assert "Torr (order of magnitude only) radiative decay does" in found["sentences"]["P1/2"]
+    assert re.search(r"P1/2\*.* ~\d", text) and "~ order of magnitude only" in text
+
+
+def test_every_number_of_the_ground_table_has_mark_and_source():
+    text = run("Rb", "Ar", "--power", "1 uW", "--beam-diameter", "5 mm").stdout
+    table = text.split("== Ground level")[1].split("spin exchange is")[0]
+    for name in ("sum of the known", "pumping light", "field (F=3, g_F=0.3337)"):
+        (row,) = [line for line in table.splitlines() if line.startswith(f"  {name}")]
+        assert re.search(r"(FROM MEMORY|COMPUTED) +\[\d+\]$", row), row
+    assert "sum of wall, transit through the beam, spin destruction by gas" in flat(text)
+    scattered = text.split("== Scattered light")[1].split("== Absorption")[0]
+    assert len(re.findall(r"FROM MEMORY$", scattered, re.MULTILINE)) == 2  # lifetime and hyperfine constants are
+
+
+def test_a_rate_as_uncertain_as_itself_says_so():
+    assert "only the order of magnitude is known" not in run("Cs", "Ar").stdout
+    ground = verdict(ask("Rb", "Kr")).ground
+    rough = [p.name for p in ground.processes if p.rate and p.rate.error and p.rate.error >= p.rate.value]
+    assert rough
+    text = run("Rb", "Kr").stdout
+    assert all(f"  {name}: only the order of magnitude is known\n" in text for name in rough)
+
+
+def test_small_shifts_are_in_megahertz():
+    text = run("Cs", "Ar", "--pressure", "10 mTorr").stdout
+    shift = 1e3 * as_json("Cs Ar --pressure 10_mTorr")["absorption"]["D1"]["shift_GHz"]
+    assert 0 < abs(shift) < 1 and f" {shift:.4f} MHz " in text
 
 
 # Files ----------------------------------------------------------------------------------------------------------------
@@ -418,6 +513,25 @@ BAD_INPUT = [
         "detuning = 5000 GHz must be finite and within 1000 GHz of the line; give another value.",
     ),
     (
+        "Na Ar --power 1_mW --beam-diameter 5_mm --detuning 300_GHz",
+        2,
+        "detuning = 300 GHz is more than half the fine structure (257.8 GHz) away from D1: name line D2 and count the "
+        "detuning from it.",
+    ),
+    (
+        "Li none --power 1_mW --beam-diameter 5_mm --line D2 --detuning=-6_GHz",
+        2,
+        "detuning = -6 GHz is more than half the fine structure (5.022 GHz) away from D2: name line D1 and count the "
+        "detuning from it.",
+    ),
+    (
+        "Rb Ar --field 1.1e6_G",
+        2,
+        "--field = 1.1e+06 G is above 1e+06 G: the Zeeman energy there is comparable with the fine structure of every "
+        "alkali (from 8 % of it, in Cs, to far above it, in Li), and no laboratory has such a field; give a smaller "
+        "one.",
+    ),
+    (
         "Rb Ar --power 1_mW --beam-diameter 5_mm --linewidth=-1_GHz",
         2,
         "laser linewidth = -1 GHz must be finite and >= 0 (0 means narrow); give another value.",
@@ -457,8 +571,8 @@ BAD_INPUT = [
     (
         "Rb Ar --temperature 1500",
         1,
-        "temperature of the Rb vapour = 1500 K is outside 298 .. 600 K. No published vapour-pressure formula of the "
-        "data covers it: choose a temperature inside, or measure the density and give it directly.",
+        "temperature of the Rb vapour = 1500 K is outside 298 .. 600 K. The vapour-pressure formula does not hold "
+        "there: choose a temperature inside.",
     ),
 ]
 

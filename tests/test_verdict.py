@@ -17,11 +17,13 @@ from sympy.physics.wigner import wigner_6j
 import pertcalc.vapour.verdict as module
 from pertcalc.errors import InputError, OutOfRangeError, UnknownNameError
 from pertcalc.measured import as_rate, measurements
+from pertcalc.report.verdict_words import ground_sentence
 from pertcalc.species import UPPER_LEVEL, alkali
 from pertcalc.vapour.excited import COLLISIONS, DECAY, FIELD
 from pertcalc.vapour.fill import IMPACT_LIMIT
 from pertcalc.vapour.ground import TRANSIT, WALL
 from pertcalc.vapour.ground_balance import PUMPING, decays_at, light_decay
+from pertcalc.vapour.hanle_fields import regime
 from pertcalc.vapour.pairs import PAIRS
 from pertcalc.vapour.pump_light import PumpLight
 from pertcalc.vapour.question import DEFAULT_CELL, DEFAULT_LINE, ask
@@ -96,6 +98,12 @@ BAD = [
     ({"wall": "paraffin"}, UnknownNameError, "bare, coated"),
     ({"cell": "box 1 cm"}, InputError, "must begin with sphere, cylinder, cube"),
     ({"field_G": -1.0}, InputError, "field = -1 G"),
+    ({"field_G": 1.0001e6}, InputError, "fine structure of every alkali"),
+    (
+        {"power_W": 1e-3, "beam_diameter_cm": 1.0, "alkali": "Na", "detuning_GHz": 260.0},
+        InputError,
+        "name line D2 and count the detuning from it",
+    ),
     ({"field_G": math.nan, "pressure_torr": 0.0}, InputError, "pressure = 0 Torr"),
     ({"power_W": 1e-3}, InputError, "--beam-diameter"),
     ({"power_W": -1e-3, "beam_diameter_cm": 1.0}, InputError, "power = -0.001 W"),
@@ -208,6 +216,41 @@ def test_one_of_those_cells_crosses_at_a_step_of_g():
     assert (
         one.collisional.value / (g_J * RAD_S_G) < one.crossover_field_G < one.collisional.value / (g_J * 0.3 * RAD_S_G)
     )
+
+
+@pytest.mark.parametrize(
+    ("symbol", "gas", "pressure"), [*CELLS, ("Cs", "Xe", 100.0), ("Rb", "none", None), ("Cs", "none", None)]
+)
+def test_the_crossover_field_lies_in_its_range_whichever_g_holds(symbol, gas, pressure):
+    """Below the range the field loses with any g that may hold there, above it it wins with any."""
+    found = of(symbol, gas, pressure_torr=pressure, field_G=0.0)
+    for level in ("P1/2", "P3/2"):
+        one, where = found.balances[level][1], found.regimes[level]
+        g_J = alkali(symbol).levels[level].gJ.value
+        g_F = g_J * J[level] / (found.isotope.nuclear_spin + J[level])
+        rate, (low, high) = max(one.radiative.value, one.collisional.value), one.crossover_range_G
+        assert 0 < low <= high == one.crossover_field_G
+        for B in np.geomspace(0.01 * low, 100 * high, 200):
+            held = regime(found.isotope, level, where.width, B).g_factor
+            rates = {None: (g_F, g_J), "g_J": (g_J,), "g_F": (g_F,)}[held]
+            if B < low * (1 - 1e-9):
+                assert min(rates) * RAD_S_G * B < rate
+            if B > high * (1 + 1e-9):
+                assert max(rates) * RAD_S_G * B > rate
+        if low < high:
+            assert regime(found.isotope, level, where.width, 0.999 * high).g_factor is None
+
+
+def test_hanle_fields_are_a_range_where_neither_g_holds():
+    for field, given in ((0.5, None), (1e4, "g_J")):
+        found = of("Cs", "Ar", field_G=field)
+        assert found.regimes["P3/2"].g_factor == given
+        for one in found.balances["P3/2"].values():
+            low, high = one.hanle_range_G
+            assert one.hanle_G == pytest.approx(high, rel=1e-12)
+            # g_J/g_F = F/J = 5/1.5.
+            assert high / low == pytest.approx(10 / 3 if given is None else 1.0, rel=1e-9)
+            assert one.g_factor.value * RAD_S_G * field == pytest.approx(one.larmor, rel=1e-6)
 
 
 def test_in_a_strong_field_the_gas_must_beat_the_field():
@@ -342,6 +385,34 @@ def test_walls_relax_as_much_as_the_gas_at_the_crossover(symbol, gas, given):
     assert of(symbol, gas, pressure_torr=3.0, **given).ground.crossover_pressure_torr == pytest.approx(p, rel=1e-6)
 
 
+def test_a_step_of_the_rates_can_change_the_larger_of_walls_and_gas():
+    """Spin exchange ceases to be fastest where G reaches it, and <F_z> under the gas falls from G/22 to G/32.
+
+    With a wall of G/27 there, in a cell made for it (walls by diffusion go as 1/size^2), the gas is the larger just
+    before the step and the walls just after.
+    """
+
+    def acting(pressure: float, cell: str) -> dict[str, float]:
+        processes = of("Cs", "Ar", pressure_torr=pressure, cell=cell).ground.processes
+        return {p.name: p.rate.value for p in processes if p.rate}
+
+    here = acting(20.0, "sphere 25 mm")
+    step = 20.0 * here[EXCHANGE] / here[BY_GAS]
+    size = 25 * math.sqrt(acting(step, "sphere 25 mm")[WALL] * 27 / here[EXCHANGE])
+    ground = of("Cs", "Ar", cell=f"sphere {size} mm").ground
+    assert ground.crossover_pressure_torr == pytest.approx(step, rel=1e-6)
+    assert ground.crossover_step == "spin exchange is fastest below it" and ground.crossover_pressure_error is None
+    gas, walls = (
+        [next(p.rate.value for p in decays_at(ground, x * step / 20.0, None) if p.name == name) for x in (0.999, 1.001)]
+        for name in (BY_GAS, WALL)
+    )
+    assert gas[0] > walls[0] and gas[1] < walls[1]
+    said = ground_sentence(ground)
+    assert "the larger of walls and gas changes at" in said and "equally" not in said
+    assert "where the rates step (spin exchange is fastest below it)" in said
+    assert of("Cs", "Ar").ground.crossover_step is None
+
+
 def test_an_unknown_process_is_named_and_never_counts():
     ground = of("Li", "Ne").ground
     assert set(ground.unknown) == {BY_GAS, PAIRS, BY_ALKALI}
@@ -465,7 +536,7 @@ def test_thick_vapour_is_named_with_its_depth():
     hot = of("Cs", "none", temperature_K=400.0)
     depth = hot.trapping["D2"].optical_depth.value
     assert depth > 100 and f"D2: optical depth {depth:.3g} along the beam" in words(hot)
-    assert "Radiation trapping" in words(hot) and "quenching gas is necessary" in words(hot)
+    assert "Radiation trapping" in words(hot) and "pumping on D2 needs a quenching gas" in words(hot)
     thin = of("Na", "none", temperature_K=350.0)
     assert "optical depth" not in words(thin) and not thin.trapping["D1"].matters
     small = of("Cs", "none", temperature_K=400.0, cell="sphere 2.5 mm")

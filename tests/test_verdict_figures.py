@@ -13,7 +13,8 @@ from matplotlib.text import Annotation
 from pertcalc.constants import BOHR_MAGNETON_J_T, HBAR_J_S
 from pertcalc.errors import InputError
 from pertcalc.report import verdict_figures as figures
-from pertcalc.report.verdict_figures import draw_rates, ground_lines, impact_pressure, pressure_range, save_rates
+from pertcalc.report.verdict_figures import draw_rates, pressure_range, save_rates
+from pertcalc.report.verdict_lines import ground_lines
 from pertcalc.units import density_cm3
 from pertcalc.vapour import verdict as verdicts
 from pertcalc.vapour.excited import DECAY
@@ -25,6 +26,7 @@ from pertcalc.vapour.pump_light import pump_light
 from pertcalc.vapour.pumping import pumping
 from pertcalc.vapour.question import ask
 from pertcalc.vapour.spin_destruction import BY_ALKALI, BY_GAS, EXCHANGE
+from pertcalc.vapour.verdict import impact_pressure
 from tests.report_fakes import fake_rates
 from tests.vapour_cases import invented
 

@@ -7,7 +7,7 @@ from dataclasses import asdict
 from typing import Any
 
 from pertcalc.report.rows import as_csv
-from pertcalc.report.verdict_words import sentences
+from pertcalc.report.verdict_words import caveats, impact_limit_torr, sentences
 from pertcalc.report.words import CAUTIONS
 from pertcalc.species import COMPUTED, UPPER_LEVEL, Sourced
 from pertcalc.vapour.excited import ModelRates, RankBalance
@@ -15,6 +15,7 @@ from pertcalc.vapour.fill import DEFAULTS_ORIGIN
 from pertcalc.vapour.ground import GroundProcess
 from pertcalc.vapour.ground_balance import GroundBalance
 from pertcalc.vapour.hanle_fields import HanleField
+from pertcalc.vapour.process import weakest_mark
 from pertcalc.vapour.pumping import Pumping
 from pertcalc.vapour.verdict import Verdict
 
@@ -24,7 +25,7 @@ def verdict_json(found: Verdict) -> dict[str, Any]:
     question, rates = found.question, found.rates
     levels: dict[str, Any] = {"S1/2": _ground(found.ground)}
     for level, ranks in found.balances.items():
-        levels[level] = {str(K): _rank(balance) for K, balance in ranks.items()}
+        levels[level] = {str(K): _rank(balance, impact_limit_torr(found)) for K, balance in ranks.items()}
     return {
         "schema": "pertcalc.verdict/1",
         "alkali": question.alkali,
@@ -88,7 +89,8 @@ def _finite(value: float) -> float | None:
     return value if math.isfinite(value) else None
 
 
-def _rank(balance: RankBalance) -> dict[str, Any]:
+def _rank(balance: RankBalance, limit_torr: float) -> dict[str, Any]:
+    (hanle_low, hanle_high), (crossover_low, crossover_high) = balance.hanle_range_G, balance.crossover_range_G
     return {
         "radiative_s": balance.radiative.value,
         "radiative_error_s": balance.radiative.error,
@@ -98,15 +100,24 @@ def _rank(balance: RankBalance) -> dict[str, Any]:
         "collisional_mark": balance.collisional.mark,
         "larmor_rad_s": balance.larmor,
         "larmor_with": balance.field_with,
+        "larmor_mark": balance.g_factor.mark,
+        "g_factor": asdict(balance.g_factor),
         "hanle_free_field_G": balance.hanle_free_G,
         "hanle_field_G": balance.hanle_G,
+        "hanle_field_low_G": hanle_low,
+        "hanle_field_high_G": hanle_high,
         "hanle_field_error_G": balance.hanle_error_G,
         "dominant": balance.dominant,
         "factor": _finite(balance.factor),
         "comparable": list(balance.comparable),
         "crossover_pressure_Torr": balance.crossover_pressure_torr,
         "crossover_pressure_error_relative": balance.crossover_pressure_error,
+        "crossover_pressure_caveats": caveats(
+            balance.crossover_pressure_torr, balance.crossover_pressure_error, limit_torr
+        ),
         "crossover_field_G": balance.crossover_field_G,
+        "crossover_field_low_G": crossover_low,
+        "crossover_field_high_G": crossover_high,
     }
 
 
@@ -120,13 +131,17 @@ def _ground(ground: GroundBalance) -> dict[str, Any]:
         "pumping_s": _sourced(ground.pumping),
         "precession_damping_by_spin_exchange_s": _sourced(ground.exchange),
         "larmor_rad_s": ground.larmor,
+        "larmor_mark": weakest_mark((COMPUTED, ground.atom.levels["S1/2"].gJ.mark)),
         "g_F": ground.g_F,
-        "hanle_field_G": {words: field.field_G for words, field in ground.hanle.items()},
+        "hanle_field_G": ground.crossover_field_G,
+        "hanle_fields_G": {words: field.field_G for words, field in ground.hanle.items()},
         "dominant": ground.dominant,
         "factor": _finite(ground.factor),
         "strongest_relaxation": None if ground.strongest is None else ground.strongest.name,
         "crossover_pressure_Torr": ground.crossover_pressure_torr,
         "crossover_pressure_error_relative": ground.crossover_pressure_error,
+        "crossover_pressure_caveats": caveats(ground.crossover_pressure_torr, ground.crossover_pressure_error),
+        "crossover_step": ground.crossover_step,
         "crossover_field_G": ground.crossover_field_G,
     }
 
@@ -220,7 +235,7 @@ def verdict_csv(found: Verdict) -> str:
 
 
 def _model_row(found: Verdict, one: ModelRates) -> dict[str, Any]:
-    question, fill = found.question, found.question.fill
+    question, fill, W2 = found.question, found.question.fill, found.scattering[one.line].W2
     D = {f"D{K}": one.depolarising.get(K) for K in (1, 2, 3)}
     values = {"Gamma_R": one.gamma_R, "Gamma_I": one.gamma_I, "Gamma_E": one.gamma_E} | D
     keys = {"Gamma_R": "gamma_R", "Gamma_I": "gamma_I", "Gamma_E": "gamma_E"}
@@ -231,7 +246,7 @@ def _model_row(found: Verdict, one: ModelRates) -> dict[str, Any]:
         | values
         | {"unit": "s^-1"}
         | {f"{name}_error_relative": error for name, error in errors.items()}
-        | {"W2": found.scattering[one.line].W2.value, "W2_error": found.scattering[one.line].W2.error}
+        | {"W2": W2.value, "W2_error": W2.error, "W2_mark": W2.mark}
         | {"temperature_K": fill.temperature_K, "gas_density_cm3": question.gas_density_cm3, "field_G": fill.field_G}
         | {"method": None if found.rates is None else question.method, "mark": COMPUTED}
         | {"Gamma_R_mark": found.balances[UPPER_LEVEL[one.line]][1].radiative.mark, "version": found.version}

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import math
 from os import PathLike
 from pathlib import Path
 from textwrap import wrap
@@ -15,7 +14,7 @@ from pertcalc.errors import InputError
 from pertcalc.report.curve_figures import BLACK, BLUE, RC, SKY, VERMILION, figure_format, write_figure
 from pertcalc.report.tables import number, percent
 from pertcalc.report.verdict_lines import GAS, SUM, WALLS, GroundLines, ground_lines
-from pertcalc.report.verdict_words import VISIBLE
+from pertcalc.report.verdict_words import ROUGH, VISIBLE, caveats
 from pertcalc.species import Sourced
 from pertcalc.vapour.excited import DECAY, FIELD, RankBalance
 from pertcalc.vapour.fill import IMPACT_LIMIT
@@ -23,7 +22,7 @@ from pertcalc.vapour.ground import TRANSIT, WALL
 from pertcalc.vapour.ground_balance import PUMPING, GroundBalance
 from pertcalc.vapour.pairs import PAIRS
 from pertcalc.vapour.spin_destruction import BY_ALKALI, BY_GAS, EXCHANGE
-from pertcalc.vapour.verdict import Verdict
+from pertcalc.vapour.verdict import Verdict, impact_pressure
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -119,20 +118,12 @@ def pressure_range(found: Verdict) -> tuple[float, float]:
     return min([p / SPAN, *(one / ROOM for one in near)]), max([p * SPAN, *(one * ROOM for one in near)])
 
 
-def impact_pressure(found: Verdict) -> tuple[str, float]:
-    """Line whose width times collision duration first reaches IMPACT_LIMIT, and the fill pressure of that [Torr].
-
-    Width and density are proportional, the duration is a property of the pair.
-    """
-    line = max(found.overlap, key=lambda one: found.overlap[one])
-    worst = found.overlap[line]
-    return line, found.question.fill.pressure_torr * IMPACT_LIMIT / worst if worst > 0 else math.inf
-
-
 def _mark_conditions(panels: tuple[Axes, ...], found: Verdict, low: float, high: float) -> list[str]:
     """Upright line at the cell and shade past the impact limit; returns what did not fit on the axis, in words."""
     p = found.question.fill.pressure_torr
-    line, limit = impact_pressure(found)
+    limited = impact_pressure(found)
+    assert limited is not None  # no figure without a gas
+    line, limit = limited
     words = f"above {_torr(limit)} collisions overlap (width x duration of {line} > {IMPACT_LIMIT:g}): rates doubtful"
     for axes in panels:
         axes.axvline(p, color=_GREY, linewidth=1.2, linestyle=(0, (4, 3)), zorder=1)
@@ -156,6 +147,8 @@ def _draw_excited(axes: Axes, found: Verdict, pressures: Array, notes: list[str]
         loss = balance.collisional
         relative = None if loss.error is None or loss.value == 0 else loss.error / loss.value
         field = f"{level} Larmor frequency at {found.question.fill.field_G:g}\u00a0G [rad/s], {balance.field_with}"
+        field += ", neither g holds" if found.regimes[level].g_factor is None else ""
+        field += f", {balance.g_factor.mark}".replace(" M", "\u00a0M")
         for effect, value, words in (
             ("collisions", loss.value * pressures / p, f"{level} loss of K={K} by collisions, {_origin(loss)}"),
             (DECAY, np.full(2, balance.radiative.value), f"{level} radiative decay, {_origin(balance.radiative)}"),
@@ -185,7 +178,8 @@ def _mark_excited(axes: Axes, dots: list[tuple[float, RankBalance]], notes: list
     for place, (pressure, balance) in enumerate(dots):
         rival = FIELD if balance.larmor > balance.radiative.value else DECAY
         relative = balance.crossover_pressure_error
-        meets = _torr(pressure, None if relative is None else relative * pressure)
+        rough = ROUGH in caveats(pressure, relative)
+        meets = _torr(pressure, None if relative is None or rough else relative * pressure, rough)
         if not low <= pressure <= high:
             notes.append(f"{balance.level}: collisions equal {rival} at {meets} (off the axis)")
             continue
@@ -253,7 +247,14 @@ def _mark_ground(axes: Axes, ground: GroundBalance, lines: GroundLines, notes: l
         return
     name = WALLS if WALLS in lines.rates else WALL if WALL in lines.rates else TRANSIT
     value = float(lines.rates[name][np.searchsorted(lines.pressures, meet)])
-    _dot(axes, meet, value, f"walls = gas\n{_torr(meet)}", (0, -15))
+    words = "walls = gas" if ground.crossover_step is None else "larger of walls, gas changes"
+    _dot(
+        axes,
+        meet,
+        value,
+        f"{words}\n{_torr(meet, rough=ROUGH in caveats(meet, ground.crossover_pressure_error))}",
+        (0, -15),
+    )
 
 
 def _legend(axes: Axes, notes: list[str]) -> None:
@@ -278,9 +279,10 @@ def _label(words: str) -> str:
     return "\n".join(wrap(words, _LABEL_WIDTH, break_on_hyphens=False))
 
 
-def _torr(pressure: float, error: float | None = None) -> str:
+def _torr(pressure: float, error: float | None = None, rough: bool = False) -> str:
+    """A pressure [Torr]; "~" where only its order of magnitude is known."""
     spread = "" if error is None else f"\u00a0\u00b1\u00a0{number(error, 1)}"
-    return f"{number(pressure, 2)}{spread}\u00a0Torr"
+    return f"{'~' if rough else ''}{number(pressure, 2)}{spread}\u00a0Torr"
 
 
 def _origin(rate: Sourced) -> str:

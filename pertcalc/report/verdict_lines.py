@@ -16,10 +16,10 @@ from pertcalc.vapour.ground_balance import (
     FAST_EXCHANGE,
     PUMPING,
     GroundBalance,
-    LightAt,
     decays_at,
     forms_at,
     light_decay,
+    limit_steps,
 )
 from pertcalc.vapour.pairs import PAIRS
 from pertcalc.vapour.pump_light import PumpLight, pump_light
@@ -54,7 +54,7 @@ def ground_lines(found: Verdict, low: float, high: float) -> GroundLines:
     grid = np.geomspace(low, high, round(PER_DECADE * math.log10(high / low)) + 1)
     question = found.question
     light_at = lru_cache(maxsize=None)(partial(pump_light, question, found.isotope, found.lines, found.rates))
-    steps = _steps(ground, p, grid, light_at)
+    steps = tuple((p * factor, side, what) for factor, side, what in limit_steps(ground, grid / p, light_at))
     extra = [p, *(x * (1 + side) for x, *_ in steps for side in (-1e-9, 1e-9))]
     meet = ground.crossover_pressure_torr
     met = [meet] if meet is not None and low <= meet <= high else []
@@ -86,24 +86,3 @@ def _quadrature(parts: Iterable[Sourced]) -> float:
     """Error of a sum of independent rates; nan as soon as one states none, or there is none."""
     errors = [math.nan if one.error is None else one.error for one in parts]
     return math.hypot(*errors) if errors else math.nan
-
-
-def _steps(ground: GroundBalance, p: float, grid: Array, light_at: LightAt) -> tuple[tuple[float, str, str], ...]:
-    """Pressures [Torr] where a limit changes, to 1e-9 of each, and what changes there; ``p`` that of the cell."""
-
-    def forms(pressure: float) -> dict[str, bool]:
-        return forms_at(ground, pressure / p, light_at(pressure / p))
-
-    on_grid = [forms(x) for x in grid]
-    steps = []
-    for i in range(len(grid) - 1):
-        for what, holds in on_grid[i].items():
-            if holds == on_grid[i + 1][what]:
-                continue
-            below, above = grid[i], grid[i + 1]
-            while above / below - 1 > 1e-9:
-                middle = math.sqrt(below * above)
-                below, above = (middle, above) if forms(middle)[what] == holds else (below, middle)
-            side = "below" if holds else "above"
-            steps.append((math.sqrt(below * above), side, what))
-    return tuple(steps)

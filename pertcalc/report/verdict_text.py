@@ -3,15 +3,30 @@
 from __future__ import annotations
 
 import re
+from dataclasses import replace
 
 from pertcalc.report.report_text import Citations
 from pertcalc.report.tables import UNKNOWN, WIDTH, number, percent, table, wrapped
-from pertcalc.report.verdict_words import READING, VISIBLE, mixing_sentence, sentences
+from pertcalc.report.verdict_words import (
+    BEYOND,
+    MARKS,
+    READING,
+    ROUGH,
+    VISIBLE,
+    caveats,
+    field_range,
+    impact_limit_torr,
+    mixing_sentence,
+    sentences,
+)
 from pertcalc.report.words import CAUTIONS
-from pertcalc.species import Sourced
+from pertcalc.species import COMPUTED, Sourced
 from pertcalc.vapour.excited import RankBalance
 from pertcalc.vapour.fill import DEFAULTS_ORIGIN
 from pertcalc.vapour.ground import GroundProcess
+from pertcalc.vapour.ground_balance import PUMPING
+from pertcalc.vapour.level_rates import J_OF
+from pertcalc.vapour.process import weakest_mark
 from pertcalc.vapour.verdict import Verdict
 
 CELSIUS_ZERO_K = 273.15
@@ -84,7 +99,7 @@ def _value(value: Sourced | None, unit: str = "") -> str:
         return UNKNOWN
     if value.value == 0:
         return "0"
-    if value.error is not None and value.error >= abs(value.value):
+    if value.error is not None and _rough(value):
         error = number(value.error, 2)
     else:
         error = percent(None if value.error is None else abs(value.error / value.value))
@@ -99,37 +114,51 @@ def _narrow(cells: list[str]) -> list[str]:
 def _excited(found: Verdict, cite: Citations) -> list[str]:
     headers = ["level", "K", "decay\ns^-1", "collisions\ns^-1", "Larmor\nrad/s", "Hanle field, G\nfree -> here",
                "who wins,\nby a factor", "cross at\nTorr", "cross at\nG"]  # fmt: skip
+    limit = impact_limit_torr(found)
     rows = [
-        _narrow(_rank_row(balance, K == VISIBLE[level]))
+        _narrow(_rank_row(balance, K == VISIBLE[level], limit))
         for level, ranks in found.balances.items()
         for K, balance in ranks.items()
     ]
     lines = [_title("Excited levels: every rank"), *table(headers, rows)]
-    for level, where in found.regimes.items():
+    meanings = {
+        ROUGH: f"{MARKS[ROUGH]} {ROUGH}: the error is larger than the crossover pressure",
+        BEYOND: f"{MARKS[BEYOND]} {BEYOND}: collisions overlap above {number(limit, 2)} Torr",
+    }
+    marked = "".join(row[7] for row in rows)
+    lines += [line for doubt, words in meanings.items() if MARKS[doubt] in marked for line in wrapped(words + ".")]
+    for level in found.regimes:
         decay = found.balances[level][VISIBLE[level]].radiative
         lines += wrapped(f"{level}: radiative decay {_value(decay, 's^-1')} {cite(_origin(decay))}.", "    ", "  ")
-        balance = found.balances[level][VISIBLE[level]]
-        words = {
-            "g_J": f"rank K is electronic, with g_J = {_g(found, level)}",
-            "g_F": f"rank K belongs to each F, with its g_F; the table has {balance.field_with}",
-            None: "neither g_J nor g_F holds: the relaxation matrix and the full curve do (--plot-hanle); the table "
-            f"has {balance.field_with}",
-        }[where.g_factor]
-        lines += wrapped(
-            f"{level}: hyperfine structure of {where.isotope} {where.structure} within decay and collisions, nuclear "
-            f"spin {where.nucleus} in this field: {words}.",
-            "    ",
-            "  ",
-        )
+        lines += wrapped(f"{level}: {_whose_rank(found, level, cite)}.", "    ", "  ")
     return lines
 
 
-def _g(found: Verdict, level: str) -> str:
-    return number(next(one.g for one in found.fields[level] if one.F is None), 4)
+def _whose_rank(found: Verdict, level: str, cite: Citations) -> str:
+    """Whether rank K is electronic or of each F, and with which g factor."""
+    where, g = found.regimes[level], found.balances[level][VISIBLE[level]].g_factor
+    structure = f"hyperfine structure of {where.isotope} {where.structure} within decay and collisions"
+    if where.g_factor == "g_J":
+        if where.structure != "unresolved":
+            structure = f"nuclear spin of {where.isotope} decoupled in this field"
+        even = " even in this weak field" if where.nucleus == "coupled" else ""
+        return f"{structure}, so rank K is electronic{even}, with g_J = {number(g.value, 4)} {cite(_origin(g))}"
+    F = J_OF[level] + found.isotope.nuclear_spin
+    g_F = f"g_F = {number(g.value, 4)} of F={F:g} {cite(_origin(g))}"
+    coupled = f"{structure}, nuclear spin {where.nucleus} in this field"
+    if where.g_factor == "g_F":
+        return f"{coupled}: rank K belongs to each F; the table has {g_F}"
+    g_J = number(found.ground.atom.levels[level].gJ.value, 4)
+    return (
+        f"{coupled}: neither g_J = {g_J} nor {g_F} holds, only the full curve does (--plot-hanle); fields are given "
+        "from g_J to g_F, the Larmor frequency with g_F"
+    )
 
 
-def _rank_row(balance: RankBalance, visible: bool) -> list[str]:
-    hanle = f"{number(balance.hanle_free_G, 3)} -> {number(balance.hanle_G, 3)}"
+def _rank_row(balance: RankBalance, visible: bool, limit_torr: float) -> list[str]:
+    doubts = caveats(balance.crossover_pressure_torr, balance.crossover_pressure_error, limit_torr)
+    meet = number(balance.crossover_pressure_torr, 1 if ROUGH in doubts else 3)
+    hanle = f"{number(balance.hanle_free_G, 3)} -> {field_range(*balance.hanle_range_G)}"
     return [
         f"{balance.level}{'*' if visible else ''}",
         str(balance.rank),
@@ -139,24 +168,27 @@ def _rank_row(balance: RankBalance, visible: bool) -> list[str]:
         hanle,
         balance.dominant.replace("radiative ", "")
         + (f" {number(balance.factor, 2)}" if balance.ranking[1][1] > 0 else ""),
-        number(balance.crossover_pressure_torr, 3),
-        number(balance.crossover_field_G, 3),
+        "".join(MARKS[one] for one in doubts) + meet,
+        field_range(*balance.crossover_range_G),
     ]
 
 
 def _ground(found: Verdict, cite: Citations) -> list[str]:
     ground = found.ground
     rows = [_process_row(p, d, cite) for p, d in zip(ground.processes, ground.decays, strict=True)]
-    rows.append(["sum of the known", "", _value(ground.total), "" if ground.total is None else ground.total.mark, ""])
+    rows.append(["sum of the known", "", _value(ground.total), *_marked(ground.total, cite)])
     if ground.pumping is not None:
-        rows.append(["pumping light", "", _value(ground.pumping), ground.pumping.mark, ""])
+        rows.append([PUMPING, "", _value(ground.pumping), *_marked(ground.pumping, cite)])
     words = f"field (F={ground.isotope.nuclear_spin + 0.5:g}, g_F={number(ground.g_F, 4)})"
-    rows.append([words, "", f"{number(ground.larmor, 3)} rad/s", "", ""])
+    g_J = ground.atom.levels["S1/2"].gJ
+    g_F = replace(g_J, mark=weakest_mark((COMPUTED, g_J.mark)), source=f"g_F = g_J/(2I+1), g_J {g_J.source}")
+    rows.append([words, "", f"{number(ground.larmor, 3)} rad/s", *_marked(g_F, cite)])
     headers = ["process", "rate\ns^-1", "decay of <F_z>\ns^-1", "mark", "source"]
     lines = [_title(f"Ground level S1/2 of {ground.isotope.label}"), *table(headers, [*map(_narrow, rows)])]
     lines += [
         line for p in ground.processes if p.rate is None for line in wrapped(f"{p.name}: {p.reason}", "    ", "  ")
     ]
+    lines += [f"  {p.name}: only the order of magnitude is known" for p in ground.processes if _rough(p.rate)]
     regime = (
         "spin exchange is fastest: a spin temperature holds" if ground.fast_exchange else "spin exchange is not fastest"
     )
@@ -174,21 +206,31 @@ def _ground(found: Verdict, cite: Citations) -> list[str]:
 
 
 def _process_row(acts: GroundProcess, decays: GroundProcess, cite: Citations) -> list[str]:
-    mark, source = ("", "") if acts.rate is None else (acts.rate.mark, cite(_origin(acts.rate)))
     decay = "destroys none" if not acts.destroys else _value(decays.rate)
-    return [acts.name, _value(acts.rate), decay, mark, source]
+    return [acts.name, _value(acts.rate), decay, *_marked(acts.rate, cite)]
+
+
+def _marked(value: Sourced | None, cite: Citations) -> tuple[str, str]:
+    """Mark and number of the source, empty for an unknown."""
+    return ("", "") if value is None else (value.mark, cite(_origin(value)))
+
+
+def _rough(value: Sourced | None) -> bool:
+    """Whether the error is as large as the value."""
+    return value is not None and value.error is not None and value.error >= abs(value.value) > 0
 
 
 def _scattering(found: Verdict) -> list[str]:
     rows, parts = [], []
     for line, one in found.scattering.items():
         W2 = number(one.W2.value, 3) + (f" +- {number(one.W2.error, 2)}" if one.W2.error else "")
-        rows.append([line, W2, number(one.unpolarised, 3), number(one.linear, 3), number(one.electronic, 3)])
+        degrees = [number(degree, 3) for degree in (one.unpolarised, one.linear, one.electronic)]
+        rows.append([line, W2, *degrees, one.W2.mark])
         if len(one.by_isotope) > 1 and one.electronic:
             values = ", ".join(f"{label} {number(W2, 3)}" for label, W2 in one.by_isotope.items())
             parts += wrapped(f"W2 of {line} by isotope: {values}.", "    ", "  ")
-    headers = ["line", "W2", "P at 90 deg\nunpolarised", "p at 90 deg\nlinear", "W2 without\nnuclear spin"]
-    title = _title("Scattered light at zero field, natural mixture (COMPUTED)")
+    headers = ["line", "W2", "P at 90 deg\nunpolarised", "p at 90 deg\nlinear", "W2 without\nnuclear spin", "mark"]
+    title = _title("Scattered light at zero field, natural mixture")
     return [title, *table(headers, [*map(_narrow, rows)]), *parts]
 
 
@@ -200,7 +242,7 @@ def _light(found: Verdict) -> list[str]:
             [
                 line,
                 number(one.lorentz_fwhm_GHz, 3),
-                number(one.shift_GHz, 3, sign=True),
+                _shift(one.shift_GHz),
                 number(one.doppler_fwhm_GHz, 3),
                 one.resolution("S1/2"),
                 number(one.peak()[1], 3),
@@ -209,7 +251,7 @@ def _light(found: Verdict) -> list[str]:
             ]
         )
     headers = ["line", "Lorentz\nGHz", "shift\nGHz", "Doppler\nGHz", "ground\nhyperfine", "peak\ncm^2", "optical depth",
-               "quenching\ngas"]  # fmt: skip
+               "quenching gas\nto pump on it"]  # fmt: skip
     lines = [_title("Absorption and pumping (COMPUTED)"), *table(headers, rows)]
     for mixing in found.mixing.values():
         lines += wrapped(mixing_sentence(mixing), "    ", "  ")
@@ -229,6 +271,12 @@ def _light(found: Verdict) -> list[str]:
         "  ",
     )
     return lines
+
+
+def _shift(value_GHz: float) -> str:
+    """A shift [GHz], in MHz where it is below 1e-3 GHz."""
+    small = 0 < abs(value_GHz) < 1e-3
+    return f"{number(1e3 * value_GHz, 3, sign=True)} MHz" if small else number(value_GHz, 3, sign=True)
 
 
 def _models(found: Verdict) -> list[str]:

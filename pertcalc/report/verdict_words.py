@@ -2,12 +2,17 @@
 
 from __future__ import annotations
 
+import math
+
 from pertcalc.report.tables import number
 from pertcalc.vapour.excited import COLLISIONS, DECAY, FIELD, RankBalance
 from pertcalc.vapour.fill import COMPARABLE
 from pertcalc.vapour.ground_balance import PUMPING, GroundBalance
-from pertcalc.vapour.verdict import Mixing, Verdict
+from pertcalc.vapour.verdict import Mixing, Verdict, impact_pressure
 
+# What a crossover pressure is worth where it is no plain number, and its mark in a table.
+BEYOND, ROUGH = "beyond the range of the treatment", "order of magnitude only"
+MARKS = {BEYOND: "!", ROUGH: "~"}
 RANK_WORDS = {1: "orientation", 2: "alignment", 3: "octupole"}
 # The rank of each level that one sees: orientation of P1/2, alignment of P3/2.
 VISIBLE = {"P1/2": 1, "P3/2": 2}
@@ -16,7 +21,8 @@ READING = (
     "Collisions of a P level: n times the total loss of the electronic multipole K, outflow to the other level "
     f"included; COMPUTED. * marks the rank one sees. Effects within a factor {COMPARABLE:g} are called comparable.",
     "Hanle field: equal Larmor frequency and damping, hbar damping/(g mu_B); rank-2 signals have half of it as half "
-    "width. g_J holds where the nuclear spin is decoupled or unresolved, g_F where hyperfine structure is resolved.",
+    "width. g_J holds where the nuclear spin is decoupled or unresolved, g_F where hyperfine structure is resolved; "
+    "a range lies between the fields of both, where neither holds.",
     "Crossover: fill pressure at which collisions equal the larger of decay and field; field at which the Larmor "
     "frequency equals the larger of decay and collisions. In the ground level the pressure is that where walls and "
     "transit relax as much as the gas, the field that of equal Larmor frequency and damping.",
@@ -27,44 +33,78 @@ READING = (
 )
 
 
-def level_sentence(balance: RankBalance) -> str:
-    """One sentence on one rank of a P level: who wins, by what factor, and where that changes."""
+def caveats(pressure_torr: float | None, relative_error: float | None, limit_torr: float = math.inf) -> list[str]:
+    """What a crossover pressure [Torr] of some relative error [1] is worth: BEYOND ``limit_torr``, ROUGH, or []."""
+    if pressure_torr is None:
+        return []
+    holds = {BEYOND: pressure_torr > limit_torr, ROUGH: relative_error is not None and relative_error > 1}
+    return [words for words, true in holds.items() if true]
+
+
+def impact_limit_torr(found: Verdict) -> float:
+    """Fill pressure above which collisions overlap [Torr], inf without a gas."""
+    limit = impact_pressure(found)
+    return math.inf if limit is None else limit[1]
+
+
+def field_range(low_G: float, high_G: float) -> str:
+    """A field in three digits [G], or "low to high", low in two."""
+    high = number(high_G, 3)
+    return high if number(low_G, 3) == high else f"{number(low_G, 2)} to {high}"
+
+
+def level_sentence(balance: RankBalance, limit_torr: float = math.inf) -> str:
+    """One sentence on one rank of a P level: who wins, by what factor, and where that changes.
+
+    ``limit_torr`` fill pressure above which collisions overlap [Torr].
+    """
     what = f"{balance.level}: "
     rank = f"{RANK_WORDS[balance.rank]} (K={balance.rank})"
     if len(balance.comparable) > 1:
-        first = f"{' and '.join(balance.comparable)} weigh about equally on the {rank}"
+        first = f"{' and '.join(map(_called, balance.comparable))} weigh about equally on the {rank}"
     else:
-        beaten = balance.ranking[1][0]
+        beaten = _called(balance.ranking[1][0])
         factor = f"{number(balance.factor, 2)} times {beaten}" if balance.ranking[1][1] > 0 else "alone"
-        first = f"{balance.dominant} {_rules(balance.dominant)} the {rank}, {factor}"
-    return f"{what}{first}{_changes(balance)}."
+        first = (
+            f"{_called(balance.dominant)} {'rule' if balance.dominant == COLLISIONS else 'rules'} the {rank}, {factor}"
+        )
+    return f"{what}{first}{_changes(balance, limit_torr)}."
 
 
-def _rules(effect: str) -> str:
-    return "rule" if effect == COLLISIONS else "rules"
+def _called(effect: str) -> str:
+    """An effect inside a sentence."""
+    return f"the {effect}" if effect == FIELD else effect
 
 
-def _changes(balance: RankBalance) -> str:
+def _does(effect: str) -> str:
+    return f"{_called(effect)} {'do' if effect == COLLISIONS else 'does'}"
+
+
+def _changes(balance: RankBalance, limit_torr: float) -> str:
     """Where the answer changes: for each effect that does not rule, when it would."""
     parts = []
     p = balance.crossover_pressure_torr
     if p is not None:
         rival = FIELD if balance.larmor > balance.radiative.value else DECAY
         side = "below" if balance.dominant == COLLISIONS else "above"
-        taken = f"{rival} does" if side == "below" else "collisions do"
-        parts.append(f"{side} {_with_error(p, balance.crossover_pressure_error)} Torr {taken}")
+        taken = _does(rival if side == "below" else COLLISIONS)
+        parts.append(f"{side} {_pressure(p, balance.crossover_pressure_error, limit_torr)} {taken}")
+    field = f"{field_range(*balance.crossover_range_G)} G"
     if balance.dominant != FIELD:
-        parts.append(f"above {number(balance.crossover_field_G, 3)} G the field does")
+        parts.append(f"above {field} {_does(FIELD)}")
     else:
         rival = COLLISIONS if balance.collisional.value > balance.radiative.value else DECAY
-        parts.append(
-            f"below {number(balance.crossover_field_G, 3)} G {rival} {'do' if rival == COLLISIONS else 'does'}"
-        )
+        parts.append(f"below {field} {_does(rival)}")
     return "; " + ", ".join(parts)
 
 
-def _with_error(value: float, relative: float | None) -> str:
-    return number(value, 3) if relative is None else f"{number(value, 3)} +- {number(abs(value) * relative, 2)}"
+def _pressure(value: float, relative: float | None, limit_torr: float = math.inf) -> str:
+    """A crossover pressure with its error [Torr], and what it is worth."""
+    doubts = caveats(value, relative, limit_torr)
+    shown = number(value, 1 if ROUGH in doubts else 3)
+    if relative is not None and ROUGH not in doubts:
+        shown += f" +- {number(value * relative, 2)}"
+    return f"{shown} Torr" + (f" ({', '.join(doubts)})" if doubts else "")
 
 
 def ground_sentence(ground: GroundBalance) -> str:
@@ -88,13 +128,20 @@ def ground_sentence(ground: GroundBalance) -> str:
         here = "as here" if ground.dominant == FIELD else "not reached here"
         parts.append(f"a field across it above {number(field, 2)} G ({here}) turns it away first")
     if (meet := ground.crossover_pressure_torr) is not None:
-        parts.append(f"walls and gas relax it equally at {_with_error(meet, ground.crossover_pressure_error)} Torr")
+        where = _pressure(meet, ground.crossover_pressure_error)
+        if ground.crossover_step is None:
+            parts.append(f"walls and gas relax it equally at {where}")
+        else:
+            parts.append(
+                f"the larger of walls and gas changes at {where}, where the rates step ({ground.crossover_step})"
+            )
     return "; ".join(parts) + "."
 
 
 def sentences(found: Verdict) -> dict[str, str]:
     """Level -> its sentence, ground level first."""
-    levels = {level: level_sentence(ranks[VISIBLE[level]]) for level, ranks in found.balances.items()}
+    limit = impact_limit_torr(found)
+    levels = {level: level_sentence(ranks[VISIBLE[level]], limit) for level, ranks in found.balances.items()}
     return {"S1/2": ground_sentence(found.ground)} | levels
 
 

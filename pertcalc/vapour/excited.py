@@ -22,10 +22,11 @@ DECAY, COLLISIONS, FIELD = "radiative decay", "collisions", "field"
 class RankBalance:
     """What pulls at rank K of one P level.
 
-    ``radiative`` and ``collisional`` [s^-1]; ``larmor`` [rad/s] with the g factor that ``field_with`` names;
+    ``radiative`` and ``collisional`` [s^-1]; ``larmor`` [rad/s] with ``g_factor`` [1] that ``field_with`` names;
     ``hanle_free_G`` and ``hanle_G`` fields of equal Larmor frequency and decay [G], without and with collisions, and
     ``hanle_error_G`` of the latter; ``ranking`` names and rates, largest first; ``crossover_pressure_torr`` at the fill
-    temperature [Torr], None without a gas; ``crossover_field_G`` [G].
+    temperature [Torr], None without a gas; ``crossover_field_G`` [G]; ``hanle_range_G`` and ``crossover_range_G`` from
+    both g factors where neither holds, else the field twice [G].
     """
 
     level: str
@@ -33,6 +34,7 @@ class RankBalance:
     radiative: Sourced
     collisional: Sourced
     larmor: float
+    g_factor: Sourced
     field_with: str
     hanle_free_G: float
     hanle_G: float
@@ -41,6 +43,8 @@ class RankBalance:
     crossover_pressure_torr: float | None
     crossover_pressure_error: float | None  # relative [1]
     crossover_field_G: float
+    hanle_range_G: tuple[float, float]
+    crossover_range_G: tuple[float, float]
 
     @property
     def dominant(self) -> str:
@@ -74,12 +78,12 @@ def rank_balance(
     rank: int,
     rates: LevelRates,
     error: float | None,
-    g_factor: float,
+    g_factor: Sourced,
     field_with: str,
     fill: Fill,
     has_gas: bool = True,
 ) -> RankBalance:
-    """Set radiative decay, collisional loss of rank K and Larmor frequency side by side.
+    """Set radiative decay, collisional loss of rank K and Larmor frequency side by side, ``g_factor`` in every field.
 
     Parameters
     ----------
@@ -90,7 +94,7 @@ def rank_balance(
         At the density of ``fill`` [s^-1].
     error : float or None
         Relative error of the collisional loss [1].
-    g_factor, field_with : float, str
+    g_factor, field_with : Sourced, str
         g of the Larmor frequency [1] and what it belongs to.
     fill : Fill
     has_gas : bool
@@ -101,7 +105,9 @@ def rank_balance(
     RankBalance
     """
     decay, loss = rates.decay[level], rates.loss[level][rank]
-    larmor = larmor_rad_s(g_factor, fill.field_G)
+    g = g_factor.value
+    larmor = larmor_rad_s(g, fill.field_G)
+    here, crossed = hanle_field_G(g, decay + loss), hanle_field_G(g, max(decay, loss))
     effects = ((DECAY, decay), (COLLISIONS, loss), (FIELD, larmor))
     origin = "n times the total loss of this rank" if has_gas else "no buffer gas"
     absolute = None if error is None else error * loss
@@ -112,14 +118,17 @@ def rank_balance(
         radiative(alkali, level),
         Sourced(loss, "s^-1", origin, COMPUTED, absolute),
         larmor,
+        g_factor,
         field_with,
-        hanle_field_G(g_factor, decay),
-        hanle_field_G(g_factor, decay + loss),
-        hanle_field_G(g_factor, absolute or 0.0),
+        hanle_field_G(g, decay),
+        here,
+        hanle_field_G(g, absolute or 0.0),
         tuple(sorted(effects, key=lambda effect: -effect[1])),
         meet,
         error if meet is not None else None,
-        hanle_field_G(g_factor, max(decay, loss)),
+        crossed,
+        (here, here),
+        (crossed, crossed),
     )
 
 

@@ -6,6 +6,9 @@ import math
 from collections.abc import Callable, Iterable
 from dataclasses import dataclass, replace
 
+import numpy as np
+from numpy.typing import NDArray
+
 from pertcalc.species import COMPUTED, Alkali, Isotope, Sourced
 from pertcalc.vapour.excited import FIELD
 from pertcalc.vapour.fill import COMPARABLE
@@ -33,6 +36,9 @@ _OF_THE_GAS = (BY_GAS, PAIRS)
 _REACH = 1e6
 # Step in ln n of the slope there.
 _STEP = 1e-3
+# Switches of a limit are looked for within the factor _NEAR of the density where walls and gas meet; both are compared
+# _AT_STEP before and after a switch (in ln n).
+_NEAR, _AT_STEP = 10.0, 1e-6
 # The limits of the treatment that switch with the gas density, as `forms_at` names them.
 FAST_EXCHANGE = "spin exchange is fastest"
 FREE_PAIRS = "bound pairs act on the electron alone"
@@ -52,7 +58,8 @@ class GroundBalance:
     None; ``larmor`` [rad/s] of F = I + 1/2; ``exchange`` damping of the precession by spin exchange [s^-1] or None;
     ``hanle`` words for the damping -> Hanle field; ``ranking`` effects and rates, largest first;
     ``crossover_pressure_torr`` where walls and transit equal the gas, at the fill temperature [Torr], or None, with its
-    relative error [1].
+    relative error [1]; ``crossover_step`` None, or what switches where the larger of them changes by a step of the
+    rates (no error is estimated then).
     """
 
     atom: Alkali
@@ -71,6 +78,7 @@ class GroundBalance:
     ranking: tuple[tuple[str, float], ...]
     crossover_pressure_torr: float | None
     crossover_pressure_error: float | None  # relative [1]
+    crossover_step: str | None
 
     @property
     def dominant(self) -> str:
@@ -177,12 +185,13 @@ def ground_balance(
         tuple(sorted(effects, key=lambda effect: -effect[1])),
         None,
         None,
+        None,
     )
-    factor, error = _crossover(found, light_at)
+    factor, error, step = _crossover(found, light_at)
     if factor is None:
         return found
     meet = factor * question.fill.pressure_torr
-    return replace(found, crossover_pressure_torr=meet, crossover_pressure_error=error)
+    return replace(found, crossover_pressure_torr=meet, crossover_pressure_error=error, crossover_step=step)
 
 
 def light_decay(light: PumpLight, isotope: Isotope, fast_exchange: bool) -> Sourced:
@@ -227,7 +236,8 @@ def _sum(parts: Iterable[Sourced], what: str) -> Sourced | None:
 
 
 def _total(decays: Iterable[GroundProcess]) -> Sourced | None:
-    return _sum((p.rate for p in decays if p.destroys and p.rate is not None), "sum of the known processes")
+    known = {p.name: p.rate for p in decays if p.destroys and p.rate is not None}
+    return _sum(known.values(), f"sum of {', '.join(known)}")
 
 
 def _exchange(processes: Iterable[GroundProcess], isotope: Isotope) -> Sourced | None:
@@ -282,13 +292,51 @@ def forms_at(balance: GroundBalance, factor: float, light: PumpLight | None) -> 
     }
 
 
-def _crossover(balance: GroundBalance, light_at: LightAt) -> tuple[float | None, float | None]:
-    """Factor of the gas density at which wall and transit relax as much as the gas does, and its relative error.
+def limit_steps(
+    balance: GroundBalance, factors: NDArray[np.float64], light_at: LightAt
+) -> tuple[tuple[float, str, str], ...]:
+    """Where the limits of `forms_at` switch as the gas density grows.
 
-    None if they never meet. The error: those of both sides over the slope d ln(walls/gas)/d ln n.
+    Parameters
+    ----------
+    balance : GroundBalance
+    factors : array, shape (n,)
+        Rising multiples of the gas density of the cell [1]; of two switches between neighbours none is seen.
+    light_at : callable
+        As `ground_balance`.
+
+    Returns
+    -------
+    steps : tuple
+        (factor [1] good to 1e-9, "below" or "above": the side on which it holds, the limit).
+    """
+
+    def forms(factor: float) -> dict[str, bool]:
+        return forms_at(balance, factor, light_at(factor))
+
+    on_grid = [forms(float(factor)) for factor in factors]
+    steps = []
+    for i in range(len(factors) - 1):
+        for what, holds in on_grid[i].items():
+            if holds == on_grid[i + 1][what]:
+                continue
+            below, above = float(factors[i]), float(factors[i + 1])
+            while above / below - 1 > 1e-9:
+                middle = math.sqrt(below * above)
+                below, above = (middle, above) if forms(middle)[what] == holds else (below, middle)
+            steps.append((math.sqrt(below * above), "below" if holds else "above", what))
+    return tuple(steps)
+
+
+def _crossover(balance: GroundBalance, light_at: LightAt) -> tuple[float | None, float | None, str | None]:
+    """Factor of the gas density at which wall and transit relax as much as the gas does, its relative error, its step.
+
+    None if they never meet. The error: those of both sides over the slope d ln(walls/gas)/d ln n. Where the larger side
+    changes because a limit of the treatment switches (there and back again within the step, if the rates fall): no
+    error, but what switches.
     """
     if balance.around.gas is None:
-        return None, None
+        return None, None, None
     from scipy.optimize import brentq
 
     def sides(log_factor: float) -> list[Sourced | None]:
@@ -303,9 +351,14 @@ def _crossover(balance: GroundBalance, light_at: LightAt) -> tuple[float | None,
 
     span = math.log(_REACH)
     if not gap(-span) > 0 > gap(span):
-        return None, None
+        return None, None, None
     root = brentq(gap, -span, span, xtol=1e-9)
+    near = np.geomspace(1 / _NEAR, _NEAR, 33) * math.exp(root)
+    for factor, side, what in limit_steps(balance, near, light_at):
+        place = math.log(factor)
+        if (gap(place - _AT_STEP) > 0) != (gap(place + _AT_STEP) > 0):
+            return factor, None, f"{what} {side} it"
     slope = (gap(root + _STEP) - gap(root - _STEP)) / (2 * _STEP)
     errors = [None if one is None or one.error is None else one.error / one.value for one in sides(root)]
     known = [one for one in errors if one is not None]
-    return math.exp(root), math.hypot(*known) / abs(slope) if len(known) == len(errors) else None
+    return math.exp(root), math.hypot(*known) / abs(slope) if len(known) == len(errors) else None, None

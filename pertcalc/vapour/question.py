@@ -6,20 +6,26 @@ import math
 from dataclasses import dataclass
 from os import PathLike
 
+from scipy.constants import c
+
 from pertcalc.curves.curveset import CurveSet
 from pertcalc.errors import InputError, UnknownNameError
 from pertcalc.names import METHODS
 from pertcalc.rates import load_curves
-from pertcalc.species import UPPER_LEVEL, alkali_symbol, noble_gas_symbol
+from pertcalc.species import ALKALIS, UPPER_LEVEL, alkali_symbol, noble_gas_symbol
+from pertcalc.species import alkali as alkali_record
+from pertcalc.vapour.absorption import absorption_line
 from pertcalc.vapour.cell import Cell, parse_cell
-from pertcalc.vapour.fill import Fill, fill_or_defaults
+from pertcalc.vapour.fill import Fill, fill_or_defaults, larmor_rad_s
 from pertcalc.vapour.ground import Surroundings
-from pertcalc.vapour.pumping import Beam
+from pertcalc.vapour.pumping import Beam, pumping
 
 NO_GAS = "none"
 DEFAULT_LINE = "D1"
 # A usual cell: common practice, no source.
 DEFAULT_CELL = "sphere 25 mm"
+# The Zeeman energy there is 47 cm^-1: the fine structure of no alkali keeps P1/2 and P3/2 unmixed.
+LARGEST_FIELD_G = 1e6
 
 
 @dataclass(frozen=True, slots=True)
@@ -121,13 +127,29 @@ def ask(
             "needs. Take semiclassical or quantum."
         )
     fill, defaults = fill_or_defaults(symbol, temperature_K, pressure_torr, fill_temperature_K, field_G)
+    _check_field(fill.field_G)
     light = _light(power_W, beam_diameter_cm, line, detuning_GHz, linewidth_GHz)
+    if light is not None and light.beam.detuning_GHz is not None:
+        # Refuses a detuning nearer to the other line before the long computation; the gas does not matter for that.
+        pumping(absorption_line(alkali_record(symbol), light.line, fill.temperature_K), light.beam)
     place = cell if isinstance(cell, Cell) else parse_cell(DEFAULT_CELL if cell is None else cell)
     # Refuses an unknown wall and a beam larger than the cell before the long computation.
     Surroundings(fill.temperature_K, place, wall, beam_diameter_cm=beam_diameter_cm)
     kept = tuple(one for one in defaults if not (without and one in ("pressure", "fill temperature")))
     kept += ("cell",) if cell is None else ()
     return Question(symbol, name, fill, place, wall, light, beam_diameter_cm, method, curve_set, kept)
+
+
+def _check_field(field_G: float) -> None:
+    """InputError for a field at which nothing of the treatment is left."""
+    if field_G > LARGEST_FIELD_G:
+        splitting = max(alkali_record(one).fine_structure_cm1.value for one in ALKALIS)
+        share = larmor_rad_s(1.0, LARGEST_FIELD_G) / (2 * math.pi * c * 100 * splitting)
+        raise InputError(
+            f"--field = {field_G:g} G is above {LARGEST_FIELD_G:g} G: the Zeeman energy there is comparable with the "
+            f"fine structure of every alkali (from {100 * share:.0f} % of it, in Cs, to far above it, in Li), and no "
+            "laboratory has such a field; give a smaller one."
+        )
 
 
 def _refuse(given: dict[str, object]) -> None:

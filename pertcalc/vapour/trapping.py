@@ -23,10 +23,12 @@ from pertcalc.vapour.quenching import ENOUGH
 THICK = 1.0
 # Holstein's cylinder over the single flight from the axis: 1.115 (Lorentz) to 1.60 (Doppler).
 _GEOMETRY_ERROR = 0.6
+# What reabsorption spoils, said once for all lines of a cell.
 INVALIDATES = (
-    "light is reabsorbed: polarisation of the light that leaves is not that of one scattering, coherences and "
-    "alignment live longer (Hanle signals narrower than the free ones), the excited level decays more slowly, and "
-    "unpolarised reabsorbed light depolarises the ground level"
+    "Radiation trapping: light is reabsorbed: polarisation of the light that leaves is not that of one scattering, "
+    "coherences and alignment live longer (Hanle signals narrower than the free ones), the excited level decays more "
+    "slowly, and unpolarised reabsorbed light depolarises the ground level. A quenching gas takes the excited "
+    "atoms back without light (nitrogen: common practice, no source)."
 )
 
 
@@ -37,7 +39,8 @@ class Trapping:
     ``optical_depth`` [1] at the peak over the whole path; ``depth_to_wall`` [1] over the shortest way out;
     ``escape`` probability of one flight g [1]; ``emissions`` mean number of photons emitted per excitation [1];
     ``decay_rate`` effective decay of the level's population, quenching included [s^-1]; ``reabsorbed`` photons absorbed
-    again per excitation [1]; ``matters`` if depth_to_wall > 1 and reabsorbed > 1/ENOUGH; ``warnings``.
+    again per excitation [1]; ``matters`` if depth_to_wall > 1 and reabsorbed > 1/ENOUGH: pumping on the line then needs
+    a quenching gas; ``warnings`` one line on the line, then INVALIDATES where it matters.
     """
 
     optical_depth: Sourced
@@ -160,20 +163,17 @@ def trapping(
 
 
 def _warnings(line: AbsorptionLine, depth: float, to_wall: float, reabsorbed: float, matters: bool) -> tuple[str, ...]:
-    found = []
+    parts = []
     if depth > THICK:
-        found.append(
-            f"{line.line}: optical depth {depth:.3g} along the beam: rates at the entrance do not hold at the far end."
-        )
+        parts.append(f"optical depth {depth:.3g} along the beam (rates at the entrance do not hold at the far end)")
     if matters:
-        found.append(
-            f"{line.line}: optical depth {to_wall:.3g} to the wall, {reabsorbed:.3g} photons reabsorbed per excitation."
+        parts.append(
+            f"optical depth {to_wall:.3g} to the wall, {reabsorbed:.3g} photons reabsorbed per excitation: pumping on "
+            f"{line.line} needs a quenching gas"
         )
-        found.append(
-            f"Radiation trapping: {INVALIDATES}. For pumping a quenching gas is necessary (nitrogen: common practice, "
-            "no source)."
-        )
-    return tuple(found)
+    if not parts:
+        return ()
+    return (f"{line.line}: {', '.join(parts)}.", *((INVALIDATES,) if matters else ()))
 
 
 def _frequencies(line: AbsorptionLine, depth_area_GHz: float) -> tuple[Array, float]:

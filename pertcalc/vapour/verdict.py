@@ -5,6 +5,7 @@ This module only assembles: every rate comes from a room of its own. notes/verdi
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass, replace
 from functools import partial
@@ -18,11 +19,12 @@ from pertcalc.vapour.cell import coating_warning
 from pertcalc.vapour.density import VapourDensity, alkali_density
 from pertcalc.vapour.diffusion import Diffusion, diffusion
 from pertcalc.vapour.excited import ModelRates, RankBalance, coefficient, coefficient_error, model_rates, rank_balance
-from pertcalc.vapour.fill import IMPACT_LIMIT, hanle_field_G, impact_parameter
+from pertcalc.vapour.fill import IMPACT_LIMIT, impact_parameter
+from pertcalc.vapour.g_in_force import crossover_field_G, g_in_force, hanle_range_G, visible_regimes
 from pertcalc.vapour.ground_balance import GroundBalance, ground_balance
 from pertcalc.vapour.ground_spin import slowing_down
 from pertcalc.vapour.hanle import GroundHanle, HanleCurves, field_grid, ground_hanle, hanle_curves
-from pertcalc.vapour.hanle_fields import CLEAR, HanleField, Regime, field_limits, hanle_fields, regime
+from pertcalc.vapour.hanle_fields import HanleField, Regime, field_limits, hanle_fields
 from pertcalc.vapour.level_rates import J_OF, P_LEVELS, LevelRates, free_rates, level_rates
 from pertcalc.vapour.pairs import sticking
 from pertcalc.vapour.pump_light import line_in_gas, pump_light
@@ -30,7 +32,7 @@ from pertcalc.vapour.pumping import Pumping, pumping_kind, spin_coefficients, su
 from pertcalc.vapour.question import Question
 from pertcalc.vapour.scattering import Polarisability, scattering_polarisability
 from pertcalc.vapour.spin_destruction import bound_pair
-from pertcalc.vapour.trapping import Trapping, trapping
+from pertcalc.vapour.trapping import INVALIDATES, Trapping, trapping
 
 Progress = Callable[[int, int], None]
 
@@ -116,7 +118,7 @@ def verdict(question: Question, progress: Progress | None = None) -> Verdict:
         )
     electronic = free_rates(atom) if rates is None else level_rates(atom, rates, n)
     isotope = max(atom.isotopes, key=lambda one: one.abundance.value)
-    regimes = _regimes(isotope, electronic, fill.field_G)
+    regimes = visible_regimes(isotope, electronic, fill.field_G)
     lines = {line: line_in_gas(atom, line, question, rates) for line in UPPER_LEVEL}
     duration = None if rates is None else _duration_s(rates, T)
     overlap = {}
@@ -165,28 +167,6 @@ def _duration_s(rates: CollisionRates, temperature_K: float) -> float:
     return impact_parameter(width, temperature_K, rates.reduced_mass, 1.0) / width
 
 
-def _regimes(isotope: Isotope, electronic: LevelRates, field_G: float) -> dict[str, Regime]:
-    """Hyperfine structure of both P levels against the damping of their visible rank."""
-    visible = {"P1/2": 1, "P3/2": 2}
-    return {
-        level: regime(isotope, level, electronic.decay[level] + electronic.loss[level][K], field_G)
-        for level, K in visible.items()
-    }
-
-
-def _g_in_force(atom: Alkali, isotope: Isotope, where: Regime) -> tuple[float, str]:
-    """g factor of the Larmor frequency of a level, and in words which one it is."""
-    g_J = atom.levels[where.level].gJ.value
-    if where.g_factor == "g_J":
-        free = "unresolved" if where.structure == "unresolved" else "decoupled by the field"
-        return g_J, f"g_J: nuclear spin {free}"
-    J, I = J_OF[where.level], isotope.nuclear_spin
-    F = J + I
-    # Stretched level: g_F = g_J J/F.
-    words = f"g_F of F={F:g}, {isotope.label}"
-    return g_J * J / F, words if where.g_factor == "g_F" else f"{words}; structure {where.structure}, see the curve"
-
-
 def _balances(
     question: Question,
     atom: Alkali,
@@ -197,9 +177,10 @@ def _balances(
 ) -> dict[str, dict[int, RankBalance]]:
     found: dict[str, dict[int, RankBalance]] = {}
     for level in P_LEVELS:
-        g, words = _g_in_force(atom, isotope, regimes[level])
-        ranks = (
-            rank_balance(
+        g, words = g_in_force(atom, isotope, regimes[level])
+        found[level] = {}
+        for K in range(1, round(2 * J_OF[level]) + 1):
+            one = rank_balance(
                 atom,
                 level,
                 K,
@@ -210,32 +191,26 @@ def _balances(
                 question.fill,
                 rates is not None,
             )
-            for K in range(1, round(2 * J_OF[level]) + 1)
-        )
-        found[level] = {
-            one.rank: replace(one, crossover_field_G=_crossover_field_G(atom, isotope, regimes[level], one))
-            for one in ranks
-        }
+            field, reach = crossover_field_G(atom, isotope, regimes[level], one)
+            found[level][K] = replace(
+                one,
+                crossover_field_G=field,
+                crossover_range_G=reach,
+                hanle_range_G=hanle_range_G(atom, isotope, regimes[level], one),
+            )
     return found
 
 
-def _crossover_field_G(atom: Alkali, isotope: Isotope, here: Regime, balance: RankBalance) -> float:
-    """Field at which the Larmor frequency, with the g in force there, reaches the larger of decay and collisions [G].
+def impact_pressure(found: Verdict) -> tuple[str, float] | None:
+    """Line whose width times collision duration first reaches IMPACT_LIMIT, and the fill pressure of that [Torr].
 
-    g only grows with the field, from g_F to g_J where the nucleus is decoupled; a rate that lies between both Larmor
-    frequencies there is passed at that step.
+    Width and density are proportional, the duration is a property of the pair. None without a gas.
     """
-
-    def g_in(field_G: float) -> float:
-        return _g_in_force(atom, isotope, regime(isotope, here.level, here.width, field_G))[0]
-
-    rate = max(balance.radiative.value, balance.collisional.value)
-    weak, g_J = g_in(0.0), atom.levels[here.level].gJ.value
-    if g_in(field := hanle_field_G(weak, rate)) == weak:
-        return field
-    if g_in(field := hanle_field_G(g_J, rate)) == g_J:
-        return field
-    return hanle_field_G(g_J, CLEAR * here.largest)
+    if not found.overlap:
+        return None
+    line = max(found.overlap, key=lambda one: found.overlap[one])
+    worst = found.overlap[line]
+    return line, found.question.fill.pressure_torr * IMPACT_LIMIT / worst if worst > 0 else math.inf
 
 
 def _mixing(line: str, isotope: Isotope, electronic: LevelRates, rates: CollisionRates | None) -> Mixing:
@@ -334,7 +309,8 @@ def _warnings(
             for level, where in regimes.items()
             if where.largest * duration > IMPACT_LIMIT
         ]
-    found += [warning for one in trapped.values() for warning in one.warnings]
+    by_line = [warning for one in trapped.values() for warning in one.warnings]
+    found += sorted(by_line, key=lambda warning: warning == INVALIDATES)  # the explanation after all lines
     if beam is not None:
         found += beam.warnings
     if coating := coating_warning(question.wall, question.fill.temperature_K):
