@@ -8,12 +8,15 @@ from pertcalc.constants import BOHR_ANGSTROM, HARTREE_CM1
 from pertcalc.curves.base import Well
 from pertcalc.curves.curveset import CurveSet, Source, StateCurve
 from pertcalc.errors import InputError
+from pertcalc.one_electron.gas_electron import DEFAULT_MODEL
 from pertcalc.one_electron.long_range import ORDERS
 from pertcalc.one_electron.model_curves import RELATIVE_ERROR, STATES, ModelCurves
 from pertcalc.species import alkali, noble_gas
 
-# Relative errors of De and Re, judged from the wells of other authors (notes/model-curves.md, table of wells).
-WELL_ERROR = {"X": (0.40, 0.08), "A": (0.25, 0.05), "B": (0.60, 0.12)}
+# Relative errors of De and Re: how far the default electron-gas model is from the wells of other authors, rounded up
+# (notes/model-curves.md, deviations), and what the sets with given ranges, or parameters of a user, deserve.
+WELL_ERROR = {"X": (0.15, 0.02), "A": (0.25, 0.04), "B": (0.30, 0.04)}
+WELL_ERROR_OTHER = {"X": (1.00, 0.20), "A": (0.35, 0.04), "B": (1.00, 0.10)}
 WHERE = "notes/model-curves.md"
 
 
@@ -44,7 +47,8 @@ def source(model: ModelCurves, state: str) -> Source:
 
 def uncertainty(model: ModelCurves, state: str) -> dict[str, float]:
     """Judged relative errors of a state: De and Re (where there is a well), C6, C8, C10."""
-    well = {} if model.well(state) is None else dict(zip(("De", "Re"), WELL_ERROR[state], strict=True))
+    judged = WELL_ERROR if model.electron.model == DEFAULT_MODEL else WELL_ERROR_OTHER
+    well = {} if model.well(state) is None else dict(zip(("De", "Re"), judged[state], strict=True))
     return {**well, **{f"C{n}": e for n, e in zip(ORDERS, RELATIVE_ERROR[state], strict=True)}}
 
 
