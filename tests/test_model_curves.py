@@ -206,6 +206,8 @@ def test_models_and_atoms_that_do_not_exist_are_refused():
         compute_model("Rb", "Ar", [8.0], SMALL, model="hard")
     with pytest.raises(InputError, match="l_max = 6: the atom has partial waves up to l = 5"):
         compute_model("Rb", "Ar", [8.0], replace(SMALL, l_max=6), atom=build_atom("Rb", 5))
+    with pytest.raises(InputError, match="atom: its box ends at 30 bohr, at least 55 are needed"):
+        compute_model("Rb", "Ar", [8.0], SMALL, atom=build_atom("Rb", 5, 44, 30.0))
 
 
 def test_a_scattering_length_that_needs_a_bound_state_is_refused():

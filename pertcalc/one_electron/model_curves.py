@@ -29,7 +29,7 @@ from pertcalc.species import alkali_symbol, noble_gas_symbol
 Array = NDArray[np.float64]
 STATES = tuple(ORBITALS)
 # Radial functions of the pair: a box that holds the np orbitals and every Gaussian of a gas up to LARGEST_R.
-SIZE, R_MAX, LARGEST_R = 44, 60.0, 30.0
+SIZE, R_MAX, LARGEST_R, SMALLEST_BOX = 44, 60.0, 30.0, 55.0
 # The table begins where the wall reaches this [hartree] (50,000 cm^-1): no thermal collision needs more.
 WALL_TOP = 0.228
 # Last distance of the default table [bohr], where every curve is its C_n tail to a few per cent.
@@ -168,6 +168,11 @@ def compute_model(
     core = core or core_gas(a, g, electron)
     R = default_distances(core) if distances is None else _checked(distances, core)
     own_atom = atom or build_atom(a, basis.l_max, SIZE, R_MAX)
+    if own_atom.r[-1] < SMALLEST_BOX:
+        raise InputError(
+            f"atom: its box ends at {own_atom.r[-1]:.3g} bohr, at least {SMALLEST_BOX:g} are needed; build it with "
+            f"r_max = {R_MAX:g} or more."
+        )
     with _threads().limit(limits=1, user_api="blas"):
         found = energies(own_atom, electron, R, basis, progress)
         quadrature = _quadrature_error(own_atom, electron, R, basis)
