@@ -415,8 +415,9 @@ def test_helium_3_has_the_curves_of_helium_and_its_own_mass() -> None:
 def test_every_file_in_potentials(path: Path) -> None:
     # No stray file, name = id = pair.
     document = tomllib.loads(path.read_text(encoding="utf-8"))
-    assert document["id"] == path.stem == f"{document['alkali']}-{document['noble_gas']}_default".lower()
-    assert document["id"] in files.default_ids()
+    pair = f"{document['alkali']}-{document['noble_gas']}".lower()
+    assert document["id"] == path.stem and path.stem in (f"{pair}_default", f"{pair}_model")
+    assert f"{pair}_default" in files.default_ids()
     curves = files.load(path)
     assert set(curves.states) == {"X", "A", "B"}
     for name, fields in document["states"].items():
@@ -436,7 +437,8 @@ def test_every_file_in_potentials(path: Path) -> None:
         assert well.depth * HARTREE_CM1 == pytest.approx(De, rel=1e-3, abs=0.005)
         # Cs-He B is 0.32 cm^-1 deep and its table has steps of 0.001: the position is loose by 2e-3.
         assert well.position * BOHR_ANGSTROM == pytest.approx(Re, rel=2e-3)
-        assert fields["De"]["sd"] / De == pytest.approx(fields["uncertainty"]["De"], rel=0.01)
+        # Judged errors are printed with two digits.
+        assert fields["De"]["sd"] / De == pytest.approx(fields["uncertainty"]["De"], rel=0.05)
         assert curve.r_min < well.position < 24.0
         # Sorted tables with an end in the tail; a wall that thermal atoms cannot pass.
         if fields["form"] == "table":

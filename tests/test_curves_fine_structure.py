@@ -67,7 +67,8 @@ def test_derivatives_of_the_adiabatic_curves(pair: tuple[str, str]) -> None:
     for value, slope in ((fs.lower, fs.lower_derivative), (fs.upper, fs.upper_derivative)):
         centred = value(curves.B(R + h), curves.A(R + h), s) - value(curves.B(R - h), curves.A(R - h), s)
         analytic = slope(S, P, dS, dP, s)
-        assert np.abs(centred / (2 * h) - analytic).max() < 1e-6 * np.abs(analytic).max()
+        # The third derivative of a spline jumps at its knots: there the centred difference is good to a few h^2 only.
+        assert np.abs(centred / (2 * h) - analytic).max() < 3e-6 * np.abs(analytic).max()
 
 
 @pytest.mark.parametrize("name", default_ids())

@@ -24,16 +24,16 @@ def test_all_default_states_are_listed_with_mark_and_source() -> None:
     for row in rows:
         assert row.mark in ("READ", "FROM MEMORY", "COMPUTED")
         assert row.source and row.De_error_cm1 and row.Re_error_angstrom and row.C6_error_au
-    assert sum(row.mark == "READ" for row in rows) == 5
+    assert sum(row.mark == "READ" for row in rows) == 2  # A of Na-Ar and Na-Ne
     assert COLUMNS[:2] == ("pair", "state")
 
 
 def test_a_description_shows_unit_error_mark_and_source() -> None:
     text = describe(load_default("Na", "Ne"))
-    assert "De    8.1 +- 0.9 cm^-1" in text
-    assert "Re    5.29 +- 0.05 angstrom" in text
+    assert "De    145 +- 5 cm^-1" in text
+    assert "Re    2.7 +- 0.05 angstrom" in text
     assert "J. Chem. Phys. 73, 5419 (1980)" in text
-    assert text.count("READ (published)") == 3
+    assert text.count("READ (published)") == 1 and text.count("COMPUTED (model)") == 2
     assert "perturber mass [u] set here: 3.016" in describe(load_default("Na", "3He"))
 
 

@@ -170,12 +170,12 @@ def test_density_and_pressure():
         diffusion_cm2_s(nD, 0.0)
 
 
-def test_model_error_holds_the_wall_and_the_stated_errors(rb_ne):
+def test_model_error_holds_the_stated_errors(rb_ne):
     assert rb_ne.computed.error == pytest.approx(
         rb_ne.computed.value * math.hypot(rb_ne.model_error, rb_ne.numerical_error)
     )
-    # Re of 4 % moves a cross section by about 8 %; neon is so light that the second order adds nothing.
-    assert 0.06**2 < rb_ne.model_error**2 - WALL_ERROR**2 < 0.12**2
+    # Re of 2 % and De of 15 % move a cross section by some 6 %; neon is so light that the second order adds nothing.
+    assert 0.04 < rb_ne.model_error < 0.09
     assert (rb_ne.computed.unit, rb_ne.computed.mark) == (UNIT, "COMPUTED") and "rb-ne_default" in rb_ne.computed.source
 
 
@@ -200,9 +200,10 @@ def test_a_users_curves():
     no_error = replace(curves, id="mine", states=curves.states | {"X": replace(curves.states["X"], uncertainty={})})
     found = diffusion("Li", "He", 600.0, no_error)
     assert found.model_error is None and found.computed.error is None and "mine" in found.computed.source
-    table = replace(curves, states=curves.states | {"X": replace(curves.states["X"], form="table")})
-    given = diffusion("Li", "He", 600.0, table)
-    assert given.model_error < 0.1 < diffusion("Li", "He", 600.0).model_error  # a table states its own wall
+    analytic = replace(curves, states=curves.states | {"X": replace(curves.states["X"], form="tang-toennies")})
+    given = diffusion("Li", "He", 600.0, analytic)
+    # A table states its own wall, an analytic form extrapolates it.
+    assert diffusion("Li", "He", 600.0).model_error < 0.1 < WALL_ERROR < given.model_error
     with pytest.raises(InputError, match="Li-He, not"):
         diffusion("Na", "He", 400.0, curves)
 

@@ -1,9 +1,10 @@
-"""Make the 25 default curve files of potentials/ from the reference folder.
+"""Make the 25 default curve files of potentials/: X and B of the model files beside them, A through its well.
 
     python notes/scripts/make_default_curves.py REFERENCE [OUTPUT]
 
-REFERENCE holds default_curves.csv, wells.csv and curves/*.csv; OUTPUT defaults to potentials/ of the checkout. The
-result is committed; nothing at run time needs REFERENCE. notes/curves.md explains every choice made here.
+REFERENCE holds default_curves.csv and wells.csv (wells of A); OUTPUT, with *_model.toml of make_model_curves.py in it,
+defaults to potentials/ of the checkout. The result is committed; nothing at run time needs REFERENCE. notes/curves.md
+explains every choice made here.
 """
 
 from __future__ import annotations
@@ -13,19 +14,14 @@ import math
 import sys
 from pathlib import Path
 
-import numpy as np
-
 from pertcalc import constants
 from pertcalc.curves.forms import TangToennies
 
 NAMES = {"Li": "lithium", "Na": "sodium", "K": "potassium", "Rb": "rubidium", "Cs": "caesium",
          "He": "helium", "Ne": "neon", "Ar": "argon", "Kr": "krypton", "Xe": "xenon"}  # fmt: skip
-# Model points above this [cm^-1] are core repulsion on too coarse a grid; an exponential continues the wall instead.
-KEEP_BELOW = 5e4
 # The printed A and b are rounded, and so is the C10 they were made with.
 PRINTED_TOLERANCE = {"A": 0.012, "b": 1e-3, "De": 4e-3, "Re": 1e-3}
-DISPERSION_ERROR = {"X": {"C6": 0.03, "C8": 0.10, "C10": 0.15}, "A": {"C6": 0.05, "C8": 0.10, "C10": 0.15}}
-DISPERSION_ERROR["B"] = DISPERSION_ERROR["A"]
+DISPERSION_ERROR = {"C6": 0.05, "C8": 0.10, "C10": 0.15}
 # Relative error of De and Re by the kind of well, where the source prints none.
 CLASS_ERROR = {"from-memory": (0.10, 0.02), "combining-rule": (0.20, 0.04), "model": (0.50, 0.08)}
 DISPERSION_NOTE = (
@@ -34,21 +30,11 @@ DISPERSION_NOTE = (
 )
 # Wells with an address: errors in cm^-1 and angstrom as printed (None: not printed, then the judged one of the note).
 READ = {
-    ("Na", "Ar", "X"): dict(
-        sd=(0.5, 0.02), cite="Schwarzhans and Zimmermann, Verhandl. DPG 1997 (Mainz), MO 7.1",
-        where="https://dpg-verhandlungen.de/year/1997/conference/mainz/part/mo/session/7/contribution/1",
-        note="Well 41.9(5) cm^-1 at 5.01(2) angstrom READ (preliminary values of the abstract, 105 level energies).",
-    ),
     ("Na", "Ar", "A"): dict(
         sd=(3.0, 0.01), cite="Zimmermann, Braune, Schwarzhans and Bruehl, Verhandl. DPG 1999 (Heidelberg), A 15.4",
         where="https://dpg-verhandlungen.de/year/1999/conference/heidelberg/part/a/session/15/contribution/4",
         note="Mean of the READ wells of A1/2 (585 cm^-1 at 2.938 angstrom) and A3/2 (579 cm^-1 at 2.932 angstrom), "
         "preliminary values; no error is printed: sd is half the difference of the two, and 0.01 angstrom is judged.",
-    ),
-    ("Na", "Ne", "X"): dict(
-        sd=(0.9, 0.05), cite="Lapatovich et al., J. Chem. Phys. 73, 5419 (1980)",
-        where="abstract, https://ouci.dntb.gov.ua/en/works/9JBqBgq9",
-        note="Well 8.1(9) cm^-1 at 5.29(5) angstrom READ in the abstract.",
     ),
     ("Na", "Ne", "A"): dict(
         sd=(5.0, 0.05), cite="Lapatovich et al., J. Chem. Phys. 73, 5419 (1980)",
@@ -56,17 +42,7 @@ READ = {
         note='Well 145(5) cm^-1 at 2.70(5) angstrom READ in the abstract; the page prints the error as "05", so that '
         "0.5 is possible: the larger one is used.",
     ),
-    ("Na", "Ne", "B"): dict(
-        sd=(0.5, 0.16),
-        cite="Lapatovich et al., J. Chem. Phys. 73, 5419 (1980), for the well; one-electron model for the wall",
-        where="abstract, https://ouci.dntb.gov.ua/en/works/9JBqBgq9",
-        note="Well 3.0(5) cm^-1 at 7.62(16) angstrom READ in the abstract, whose relation sign is lost (probably "
-        "approx. or >=). The wall is COMPUTED, not published: points up to 11.7 bohr are the one-electron model "
-        "potential (soft set), points from 14.2 bohr are the Tang-Toennies curve through the READ well with the C_n of "
-        "this file, between them the two are blended with weight sin^2.",
-    ),
 }  # fmt: skip
-MODEL_CITE = "one-electron model-potential calculation (second Sigma state, soft electron-gas set), not published"
 
 
 def main() -> None:
@@ -79,11 +55,9 @@ def main() -> None:
         pairs.setdefault((row["alkali"], row["gas"]), {})[row["state"]] = row
     for (alkali, gas), states in pairs.items():
         identity = f"{alkali}-{gas}_default".lower()
-        points = read_points(reference / "curves" / f"{alkali}{gas}.csv")
+        model = (output / f"{alkali}-{gas}_model.toml".lower()).read_text(encoding="utf-8")
         lines = header(identity, alkali, gas)
-        for name in ("X", "A"):
-            lines += analytic_state(states[name], wells)
-        lines += tabulated_state(states["B"], points)
+        lines += model_state(model, "X") + analytic_state(states["A"], wells) + model_state(model, "B")
         (output / f"{identity}.toml").write_text("\n".join(lines) + "\n", encoding="utf-8")
         print(identity)
 
@@ -95,7 +69,7 @@ def header(identity: str, alkali: str, gas: str) -> list[str]:
         f'id = "{identity}"',
         f'alkali = "{alkali}"',
         f'noble_gas = "{gas}"',
-        f'what = "default curves of {NAMES[alkali]} with {NAMES[gas]}: X and A through their wells, B from a model"',
+        f'what = "default curves of {NAMES[alkali]} with {NAMES[gas]}: X and B one-electron model, A through its well"',
     ]
 
 
@@ -167,7 +141,7 @@ def provenance_lines(row: dict[str, str], source: tuple[str, str, str, str], sd:
     state = row["state"]
     lines = ["", f"[states.{state}.source]"]
     lines += [f"{key} = {text(value)}" for key, value in zip(("cite", "status", "where", "note"), source, strict=True)]
-    relative = {"De": sd[0] / float(row["De_cm-1"]), "Re": sd[1] / float(row["Re_angstrom"]), **DISPERSION_ERROR[state]}
+    relative = {"De": sd[0] / float(row["De_cm-1"]), "Re": sd[1] / float(row["Re_angstrom"]), **DISPERSION_ERROR}
     lines += ["", f"[states.{state}.uncertainty]  # relative"]
     return lines + [f"{key} = {value:.3g}" for key, value in relative.items()]
 
@@ -195,39 +169,12 @@ def analytic_state(row: dict[str, str], wells: list[dict[str, str]]) -> list[str
     return lines + well_lines(row, sd) + dispersion_lines(row) + provenance_lines(row, source, sd)
 
 
-def read_points(path: Path) -> np.ndarray:
-    """(R [bohr], V [cm^-1]) of the column B_soft, empty rows skipped, the innermost wall left out."""
-    rows = csv.DictReader(line for line in path.open(encoding="utf-8") if not line.startswith("#"))
-    points = np.array([(float(r["R_au"]), float(r["B_soft_cm-1"])) for r in rows if r["B_soft_cm-1"].strip()])
-    return points[points[:, 1] <= KEEP_BELOW]
-
-
-def with_read_well(points: np.ndarray, row: dict[str, str]) -> np.ndarray:
-    """The model wall inside 11.7 bohr, the Tang-Toennies curve of the READ well outside 14.2 bohr, blended between."""
-    De, Re = float(row["De_cm-1"]) / constants.HARTREE_CM1, float(row["Re_angstrom"]) / constants.BOHR_ANGSTROM
-    outside = TangToennies.from_well(De, Re, *(float(row[key]) for key in ("C6_au", "C8_au", "C10_au")))
-    R, V = points.T
-    weight = np.sin(np.pi / 2 * np.clip((R - 11.7) / 2.5, 0.0, 1.0)) ** 2
-    return np.column_stack([R, (1 - weight) * V + weight * outside(R) * constants.HARTREE_CM1])
-
-
-def tabulated_state(row: dict[str, str], points: np.ndarray) -> list[str]:
-    """The table of B with its C_n tail."""
-    status = status_of(row)
-    if status == "published":
-        points = with_read_well(points, row)
-        source = source_of(row, [])
-    else:
-        note = (
-            "Column B_soft of the model table; points above 50,000 cm^-1 left out. With Ar, Kr and Xe the well may be "
-            f"up to twice too deep. {DISPERSION_NOTE}"
-        )
-        source = (MODEL_CITE, "model", "notes/curves.md", note)
-    sd = errors_of(row, status)
-    lines = ["", f"[states.{row['state']}]", 'form = "table"'] + well_lines(row, sd) + dispersion_lines(row)
-    lines += ["# R [bohr], V [cm^-1]", "points = ["]
-    lines += [f"  [{R:.2f}, {V:.3f}]," for R, V in points] + ["]"]
-    return lines + provenance_lines(row, source, sd)
+def model_state(model: str, name: str) -> list[str]:
+    """The lines of one state of a model file, with a blank line before them."""
+    begin = model.index(f"[states.{name}]")
+    later = [model.find(f"\n[states.{other}]") for other in "XAB" if other > name or (name, other) == ("X", "A")]
+    ends = [end for end in later if end > begin]
+    return ["", *model[begin : min(ends, default=len(model))].rstrip("\n").split("\n")]
 
 
 if __name__ == "__main__":

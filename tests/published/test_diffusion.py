@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -12,7 +13,8 @@ from pertcalc.collisions.collision_integrals import classical_momentum_transfer,
 from pertcalc.collisions.pair import CollisionPair
 from pertcalc.collisions.transport import transport_cross_sections
 from pertcalc.constants import AMU_AU, KELVIN_HARTREE
-from pertcalc.curves.forms import LennardJones
+from pertcalc.curves.files import load_default
+from pertcalc.curves.forms import LennardJones, TangToennies
 from pertcalc.vapour.diffusion import WALL_ERROR, Diffusion, MeasuredDiffusion, diffusion, measured_diffusion
 
 # Source: Monchick and Mason, J. Chem. Phys. 35, 1676 (1961), Omega(1,1)* of the 12-6 potential, four digits; READ in a
@@ -89,26 +91,36 @@ def usable(one: Diffusion) -> list[MeasuredDiffusion]:
     return [r for r in one.measured if r.own.mark == "READ" and r.standing == "usable" and r.own.error is not None]
 
 
-def test_wall_error_is_the_rms_deviation_from_what_was_measured(found):
-    # Every READ row with a stated error (sources in pertcalc/data/vapour/diffusion.csv). The default curves X make
-    # diffusion too slow throughout but for Rb-He: the walls of the analytic forms stand too far out.
+def misfit(found: dict[tuple[str, str], Diffusion]) -> float:
+    """Rms of ln(computed/measured) over every READ row with a stated error; sources in data/vapour/diffusion.csv."""
     ratios = [math.log(one.computed.value / row.scaled.value) for one in found.values() for row in usable(one)]
     assert len(ratios) == 13
-    assert float(np.sqrt(np.mean(np.square(ratios)))) == pytest.approx(WALL_ERROR, abs=0.02)
+    return float(np.sqrt(np.mean(np.square(ratios))))
 
 
-@pytest.mark.parametrize("pair", [p for p in MEASURED_PAIRS if p != ("Rb", "Ne")], ids="-".join)
+def test_tabulated_walls_meet_the_measurements(found):
+    # None of these numbers went into the curves: electron-gas scattering and ion-gas wells did (notes/electron-gas.md).
+    assert misfit(found) < 0.08
+
+
+def test_wall_error_is_the_misfit_of_analytic_forms(found):
+    # Tang-Toennies forms through the same wells make diffusion too slow throughout: their walls stand too far out.
+    analytic = {}
+    for pair in MEASURED_PAIRS:
+        curves = load_default(*pair)
+        X = curves.states["X"]
+        well = X.curve.well()
+        form = TangToennies.from_well(well.depth, well.position, X.curve.C6, X.curve.C8, X.curve.C10)
+        moved = replace(X, curve=form, form="tang-toennies")
+        analytic[pair] = diffusion(*pair, 300.0, replace(curves, id="analytic", states=curves.states | {"X": moved}))
+    assert misfit(analytic) == pytest.approx(WALL_ERROR, abs=0.02)
+
+
+@pytest.mark.parametrize("pair", MEASURED_PAIRS, ids="-".join)
 def test_computed_and_measured_agree_within_their_errors(found, pair):
     for row in usable(found[pair]):
         error = math.hypot(found[pair].computed.error, row.scaled.error)
         assert abs(found[pair].computed.value - row.scaled.value) < 1.5 * error
-
-
-def test_rubidium_neon_is_known_to_be_bad(found):
-    # Computed 0.148 against 0.214(14) cm^2/s READ: curve X from a combining rule. Better curves will break this test.
-    one = found["Rb", "Ne"]
-    assert 1.3 < usable(one)[0].scaled.value / one.computed.value < 1.6
-    assert one.chosen.mark == "READ"
 
 
 def test_temperature_law_of_sodium_in_helium():

@@ -12,27 +12,45 @@ LAPATOVICH = "Lapatovich et al., J. Chem. Phys. 73, 5419 (1980), abstract READ a
 SCHWARZHANS = "Schwarzhans and Zimmermann, Verhandl. DPG 1997 Mainz MO 7.1, READ at dpg-verhandlungen.de"
 ZIMMERMANN = "Zimmermann et al., Verhandl. DPG 1999 Heidelberg A 15.4, READ at dpg-verhandlungen.de"
 # gas, state, De and printed error [cm^-1], Re and printed error [angstrom], source.
-WELLS = [
+# The curve of A goes through its well; X and B are computed without any of these numbers.
+THROUGH = [("Ne", "A", 145.0, 5.0, 2.70, 0.05, LAPATOVICH)]
+COMPUTED = [
     ("Ar", "X", 41.9, 0.5, 5.01, 0.02, SCHWARZHANS),
     ("Ne", "X", 8.1, 0.9, 5.29, 0.05, LAPATOVICH),
-    ("Ne", "A", 145.0, 5.0, 2.70, 0.05, LAPATOVICH),
     ("Ne", "B", 3.0, 0.5, 7.62, 0.16, LAPATOVICH),
 ]
 
 
-@pytest.mark.parametrize("gas, state, De, De_error, Re, Re_error, source", WELLS)
-def test_wells_of_sodium(
-    gas: str, state: str, De: float, De_error: float, Re: float, Re_error: float, source: str
-) -> None:
+def default_well(gas: str, state: str):
+    """State curve, depth [cm^-1] and position [angstrom] of a default curve of sodium."""
     entry = load_default("Na", gas).states[state]
     well = entry.curve.well()
     assert well is not None
-    # The curves go through these wells: a tenth of the printed error is copying and table rounding.
-    assert well.depth * HARTREE_CM1 == pytest.approx(De, abs=0.1 * De_error), source
-    assert well.position * BOHR_ANGSTROM == pytest.approx(Re, abs=0.1 * Re_error), source
+    return entry, well.depth * HARTREE_CM1, well.position * BOHR_ANGSTROM
+
+
+@pytest.mark.parametrize("gas, state, De, De_error, Re, Re_error, source", THROUGH)
+def test_curves_through_a_published_well(
+    gas: str, state: str, De: float, De_error: float, Re: float, Re_error: float, source: str
+) -> None:
+    entry, depth, position = default_well(gas, state)
+    # A tenth of the printed error is copying and table rounding.
+    assert depth == pytest.approx(De, abs=0.1 * De_error), source
+    assert position == pytest.approx(Re, abs=0.1 * Re_error), source
     assert entry.mark == "READ"
     assert entry.uncertainty["De"] == pytest.approx(De_error / De, rel=0.01)
     assert entry.uncertainty["Re"] == pytest.approx(Re_error / Re, rel=0.01)
+
+
+@pytest.mark.parametrize("gas, state, De, De_error, Re, Re_error, source", COMPUTED)
+def test_computed_wells_against_published_ones(
+    gas: str, state: str, De: float, De_error: float, Re: float, Re_error: float, source: str
+) -> None:
+    # Within 1.5 combined errors: the printed one and the curve's own from its file.
+    entry, depth, position = default_well(gas, state)
+    assert entry.mark == "COMPUTED"
+    assert abs(depth - De) < 1.5 * (De_error**2 + (entry.uncertainty["De"] * depth) ** 2) ** 0.5, source
+    assert abs(position - Re) < 1.5 * (Re_error**2 + (entry.uncertainty["Re"] * position) ** 2) ** 0.5, source
 
 
 def test_sodium_argon_fine_structure_wells() -> None:
