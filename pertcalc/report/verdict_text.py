@@ -112,8 +112,8 @@ def _narrow(cells: list[str]) -> list[str]:
 
 
 def _excited(found: Verdict, cite: Citations) -> list[str]:
-    headers = ["level", "K", "decay\ns^-1", "collisions\ns^-1", "Larmor\nrad/s", "Hanle field, G\nfree -> here",
-               "who wins,\nby a factor", "cross at\nTorr", "cross at\nG"]  # fmt: skip
+    headers = ["level", "K", "decay\ns^-1", "collisions\ns^-1", "Larmor\nrad/s", "Hanle\nfield, G",
+               "who wins,\nby a factor", "cross,\nTorr", "cross,\nG"]  # fmt: skip
     limit = impact_limit_torr(found)
     rows = [
         _narrow(_rank_row(balance, K == VISIBLE[level], limit))
@@ -128,8 +128,10 @@ def _excited(found: Verdict, cite: Citations) -> list[str]:
     marked = "".join(row[7] for row in rows)
     lines += [line for doubt, words in meanings.items() if MARKS[doubt] in marked for line in wrapped(words + ".")]
     for level in found.regimes:
-        decay = found.balances[level][VISIBLE[level]].radiative
-        lines += wrapped(f"{level}: radiative decay {_value(decay, 's^-1')} {cite(_origin(decay))}.", "    ", "  ")
+        balance = found.balances[level][VISIBLE[level]]
+        decay, free = balance.radiative, number(balance.hanle_free_G, 3)
+        words = f"radiative decay {_value(decay, 's^-1')} {cite(_origin(decay))}, alone a Hanle field of {free} G"
+        lines += wrapped(f"{level}: {words}.", "    ", "  ")
         lines += wrapped(f"{level}: {_whose_rank(found, level, cite)}.", "    ", "  ")
     return lines
 
@@ -158,14 +160,13 @@ def _whose_rank(found: Verdict, level: str, cite: Citations) -> str:
 def _rank_row(balance: RankBalance, visible: bool, limit_torr: float) -> list[str]:
     doubts = caveats(balance.crossover_pressure_torr, balance.crossover_pressure_error, limit_torr)
     meet = number(balance.crossover_pressure_torr, 1 if ROUGH in doubts else 3)
-    hanle = f"{number(balance.hanle_free_G, 3)} -> {field_range(*balance.hanle_range_G)}"
     return [
         f"{balance.level}{'*' if visible else ''}",
         str(balance.rank),
         number(balance.radiative.value, 3),
         _value(balance.collisional),
         number(balance.larmor, 3),
-        hanle,
+        field_range(*balance.hanle_range_G),
         balance.dominant.replace("radiative ", "")
         + (f" {number(balance.factor, 2)}" if balance.ranking[1][1] > 0 else ""),
         "".join(MARKS[one] for one in doubts) + meet,
