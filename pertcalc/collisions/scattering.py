@@ -42,6 +42,8 @@ WEAK = 0.05
 WINDOW = 9.0
 ONSET = 4.0
 _PROBES = 14
+# A chunk goes on without the paths that arrived once less than this share of it is still under way.
+STILL_GOING = 0.9
 # Paths stepped together: both blocks of one chunk fill the level-2 cache of common machines.
 CHUNK = 1024
 
@@ -131,12 +133,7 @@ def expected_steps(paths: _Paths) -> Array:
 
 
 def scatter(
-    family: PathFamily,
-    energy: Array,
-    b: Array,
-    turning_point: Array,
-    step_factor: Array | float = 1.0,
-    chunk: int = CHUNK,
+    family: PathFamily, energy: Array, b: Array, turning_point: Array, step_factor: Array | float = 1.0
 ) -> Scattering:
     """S-matrices of the collisions (energy, b) on one family of paths.
 
@@ -147,8 +144,6 @@ def scatter(
         Kinetic energy [hartree], impact parameter [bohr], turning point [bohr].
     step_factor : ndarray, shape (n,), or float
         Multiplies the number of steps of every path [1].
-    chunk : int
-        Paths stepped together: every one takes the steps of the longest, so that a small batch wants smaller chunks.
 
     Returns
     -------
@@ -162,12 +157,12 @@ def scatter(
     exponentials = 0
     factor = np.broadcast_to(np.asarray(step_factor, dtype=float), b.shape)
     paths = _Paths.of(family, energy, b, turning_point)
-    # Paths of like length travel together: a chunk takes as many steps as its longest path.
+    # Paths of like length travel together.
     order = np.argsort(expected_steps(paths) * factor, kind="stable")
-    for some in np.array_split(order, max(1, -(-b.size // chunk))):
-        S, line_phase[some], steps = _scatter_chunk(paths.some(some), factor[some])
+    for some in np.array_split(order, max(1, -(-b.size // CHUNK))):
+        S, line_phase[some], count = _scatter_chunk(paths.some(some), factor[some])
         block_a[some], block_b[some] = S[: some.size], S[some.size :]
-        exponentials += 4 * steps * some.size
+        exponentials += count
     return Scattering(block_a, block_b, line_phase, exponentials)
 
 
@@ -175,34 +170,65 @@ def _both(a: Array, b: Array) -> Array:
     return np.concatenate([a, b], axis=-1)
 
 
+@dataclass(slots=True)
+class _State:
+    """Where n half paths are: propagators W (3, 2, 3, 2 n) and their phase (2 n,), integrals and coordinate (n,)."""
+
+    W: Array
+    phase: Array
+    time: Array
+    turn: Array
+    line_phase: Array
+    s: Array
+
+    @classmethod
+    def at_rest(cls, n: int) -> _State:
+        W = np.zeros((3, 2, 3, 2 * n))
+        for i in range(3):
+            W[i, 0, i] = 1.0
+        return cls(W, np.zeros(2 * n), *(np.zeros(n) for _ in range(4)))
+
+    def take(self, index: NDArray[np.intp]) -> _State:
+        both = _both(index, index + self.s.size)
+        single = (array[index] for array in (self.time, self.turn, self.line_phase, self.s))
+        return _State(self.W[..., both], self.phase[both], *single)
+
+    def put(self, index: NDArray[np.intp], part: _State) -> None:
+        both = _both(index, index + self.s.size)
+        self.W[..., both], self.phase[both] = part.W, part.phase
+        self.time[index], self.turn[index], self.line_phase[index] = part.time, part.turn, part.line_phase
+
+
 def _scatter_chunk(paths: _Paths, step_factor: Array) -> tuple[ComplexArray, Array, int]:
-    """S of blocks A then B, shape (2 n, 3, 3), the line phase, shape (n,), and the number of steps."""
-    n = paths.b.size
+    """S of blocks A then B, shape (2 n, 3, 3), the line phase, shape (n,), and the number of exponentials."""
     splitting = paths.family.pair.splitting
-    W = np.zeros((3, 2, 3, 2 * n))
-    for i in range(3):
-        W[i, 0, i] = 1.0
-    phase = np.zeros(2 * n)
-    time, turn, line_phase = np.zeros(n), np.zeros(n), np.zeros(n)
+    state = whole = _State.at_rest(paths.b.size)
+    going = np.arange(paths.b.size)
     last = paths.family.last_coordinate(paths.turning_point)
     offsets = np.array([[0.5 - GAUSS_OFFSET], [0.5 + GAUSS_OFFSET]])
-    s = np.zeros(n)
-    width = 1 / (step_factor * _meet(paths, s + 1e-3).stiffness)
-    steps = 0
+    width = 1 / (step_factor * _meet(paths, state.s + 1e-3).stiffness)
+    steps = exponentials = 0
     while steps < STEPS_MOST and np.any(width > 0):
-        at = _meet(paths, s + offsets * width)
+        at = _meet(paths, state.s + offsets * width)
         times, turns = at.time * width, at.turn * width
         matrices = _hamiltonian(splitting, times, turns, at.anisotropy * width, at.coupling)
-        time += 0.5 * times.sum(axis=0)
-        turn += 0.5 * turns.sum(axis=0)
-        line_phase += np.sum(at.line * width, axis=0)  # both halves of the path
+        state.time += 0.5 * times.sum(axis=0)
+        state.turn += 0.5 * turns.sum(axis=0)
+        state.line_phase += np.sum(at.line * width, axis=0)  # both halves of the path
         for near, far in ((MAGNUS_NEAR, MAGNUS_FAR), (MAGNUS_FAR, MAGNUS_NEAR)):
             H: Symmetric = tuple(near * element[0] + far * element[1] for element in matrices)  # type: ignore
-            W, phase = apply_exponential(W, H, phase)
-        s = s + width
-        width = np.where(s < last, 1 / (step_factor * at.stiffness[1]), 0.0)
+            state.W, state.phase = apply_exponential(state.W, H, state.phase)
+        state.s = state.s + width
+        width = np.where(state.s < last, 1 / (step_factor * at.stiffness[1]), 0.0)
         steps += 1
-    return _close(W, phase, time, turn, splitting), line_phase, steps
+        exponentials += 4 * width.size
+        left = np.flatnonzero(width)
+        if left.size < STILL_GOING * width.size:  # those that arrived step no further
+            whole.put(going, state)
+            state, going, paths = state.take(left), going[left], paths.some(left)
+            step_factor, last, width = step_factor[left], last[left], width[left]
+    whole.put(going, state)
+    return _close(whole.W, whole.phase, whole.time, whole.turn, splitting), whole.line_phase, exponentials
 
 
 def _hamiltonian(splitting: float, time: Array, turn: Array, anisotropy: Array, coupling: Array) -> Symmetric:

@@ -17,7 +17,7 @@ from pertcalc.collisions.impact import ImpactGrid, impact_grid
 from pertcalc.collisions.multipoles import INDEX, OBSERVABLES, observables
 from pertcalc.collisions.pair import R_END, CollisionPair
 from pertcalc.collisions.paths import PathFamily
-from pertcalc.collisions.scattering import CHUNK, scatter
+from pertcalc.collisions.scattering import scatter
 
 Array = NDArray[np.float64]
 Progress = Callable[[int, int], None]
@@ -192,7 +192,6 @@ def path_values(
     grids: list[ImpactGrid],
     step_factor: Array,
     work: dict[str, int],
-    chunk: int = CHUNK,
 ) -> list[Array]:
     """Observables of every path of several energies, one array (points, observables) per grid [1].
 
@@ -204,13 +203,11 @@ def path_values(
     grids : list of n ImpactGrid
     work : dict
         "paths" and "exponentials" are counted up.
-    chunk : int
-        Paths stepped together.
     """
     sizes = [grid.b.size for grid in grids]
     b = np.concatenate([grid.b for grid in grids])
     turning_point = np.concatenate([grid.turning_point for grid in grids])
-    scattering = scatter(family, np.repeat(energy, sizes), b, turning_point, np.repeat(step_factor, sizes), chunk)
+    scattering = scatter(family, np.repeat(energy, sizes), b, turning_point, np.repeat(step_factor, sizes))
     work["paths"] += b.size
     work["exponentials"] += scattering.exponentials
     return np.split(observables(scattering), np.cumsum(sizes)[:-1])
