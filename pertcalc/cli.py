@@ -160,12 +160,16 @@ def _rendered(made: Any, as_json: bool, as_csv: bool) -> str:
     show_default="300 K",
     help='As 368 (kelvin) or "95 degC"; may be repeated.',
 )
+@click.option(
+    "--ensemble", "members", type=int, metavar="N", help="Sample every stated error N times: spread and its sources."
+)
 @rate_options
 @result_options
 def rates(
     alkali: str,
     gas: str,
     temperatures: tuple[float, ...],
+    members: int | None,
     method: str,
     curve_file: str | None,
     as_json: bool,
@@ -176,7 +180,9 @@ def rates(
     """Collision rates of ALKALI with GAS per unit gas density, at any number of temperatures.
 
     Widths, shifts, multipole losses and transfers with numerical and model error and temperature exponent. With
-    --curves FILE, GAS may be any perturber that file names.
+    --curves FILE, GAS may be any perturber that file names. --ensemble 64 samples what the curves state as uncertain
+    and prints the 16-84 % interval of every rate and the three inputs it comes from; it costs about twelve times as
+    much, and Ctrl-C prints the members that are finished.
 
     \b
     Example:
@@ -185,6 +191,9 @@ def rates(
     one_format(as_json, as_csv)
     check_targets(force, output)
     gas = checked_gas(gas, curve_file)
+    if members is not None:
+        _ensemble(alkali, gas, temperatures, members, method, curve_file, as_json, as_csv, output, force)
+        return
     from pertcalc.rates import collision_rates
 
     with progress_bar(f"{alkali} + {gas}") as progress:
@@ -202,6 +211,37 @@ def rates(
 
         text = rates_text(found)
     deliver(text, output, force)
+
+
+def _ensemble(
+    alkali: str,
+    gas: str,
+    temperatures: tuple[float, ...],
+    members: int,
+    method: str,
+    curve_file: str | None,
+    as_json: bool,
+    as_csv: bool,
+    output: str | None,
+    force: bool,
+) -> None:
+    """The rates with their ensemble, in the format asked for."""
+    from pertcalc.ensemble import ensemble
+    from pertcalc.report.as_json import dump
+    from pertcalc.report.ensemble_data import ensemble_csv, rates_ensemble_json
+    from pertcalc.report.ensemble_text import rates_ensemble_text
+    from pertcalc.spread import INTERVAL, check_size
+
+    check_size(members, INTERVAL)
+    with progress_bar(f"{alkali} + {gas}, {members} members") as progress:
+        found = ensemble(alkali, gas, list(temperatures), members, curves=curve_file, method=method, progress=progress)
+    if as_json:
+        text = dump(rates_ensemble_json(found))
+    else:
+        text = ensemble_csv(found) if as_csv else rates_ensemble_text(found)
+    deliver(text, output, force)
+    if found.interrupted:
+        raise Shown(f"stopped by the user; {found.size} of {found.asked} members were finished.", INTERRUPTED)
 
 
 cli.add_command(curves)

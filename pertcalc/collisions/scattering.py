@@ -166,7 +166,7 @@ def scatter(
     return Scattering(block_a, block_b, line_phase, exponentials)
 
 
-def _both(a: Array, b: Array) -> Array:
+def _both(a: NDArray, b: NDArray) -> NDArray:
     return np.concatenate([a, b], axis=-1)
 
 
