@@ -108,16 +108,15 @@ def ensemble(
     if outcome.failed and not outcome.done and not outcome.interrupted:
         raise next(iter(outcome.failed.values()))
     done = sorted(map(int, outcome.done))
-    found = {
-        key: _samples(key, [(bases[chosen[i]][0], outcome.done[str(i)][0], nominals[chosen[i]]) for i in done])
-        for key in bases[0][0]
-    }
+    own = [nominals[k] for k in chosen[done]]
+    coarse = [(bases[chosen[i]][0], outcome.done[str(i)][0]) for i in done]
+    found = {key: _samples(key, coarse, own).reshape(len(done), T.size) for key in bases[0][0]}
     if method == "semiclassical":
-        own = [method_errors(one, T) for one in sets]
+        errors = [method_errors(one, T) for one in sets]
         for key, values in found.items():
-            errors = np.array([own[chosen[i]][key] for i in done]).reshape(values.shape)
             column = z[done, [one.name for one in inputs].index(method_name(key))]
-            found[key] = _with_method(key, values, value_of(nominals[0], key), errors, column[:, None])
+            sizes = np.array([errors[k][key] for k in chosen[done]]).reshape(values.shape)
+            found[key] = _with_method(key, values, own, sizes, column[:, None])
     return Ensemble(
         nominal=nominals[0],
         inputs=inputs,
@@ -147,33 +146,36 @@ def _member(
     return found
 
 
-def _samples(key: Key, members: list[tuple[Mapping[Key, Array], Mapping[Key, Array], CollisionRates]]) -> Array:
-    """Samples (m, n) of one rate from (undistorted coarse, coarse, full answer) of every member.
+def _samples(
+    key: Key, coarse: list[tuple[Mapping[Key, Array], Mapping[Key, Array]]], nominals: list[CollisionRates]
+) -> Array:
+    """Samples (m, n) of one rate from (undistorted, distorted) coarse rates and the full answer of every member.
 
     Ratios for what is positive, differences for shifts (in units of the width: both are one amplitude). The gain is
     the transfer times the orientation each transfer carries, and that share is what changes by a difference.
     """
     rows = []
-    for base, coarse, nominal in members:
+    for (base, moved), nominal in zip(coarse, nominals, strict=True):
         full = value_of(nominal, key)
         if key[0] == "shift":
             width = ("fwhm", key[1])
-            rows.append(full + (coarse[key] - base[key]) * value_of(nominal, width) / base[width])
+            rows.append(full + (moved[key] - base[key]) * value_of(nominal, width) / base[width])
         elif key[0] == "gain":
             flow = ("transfer", key[1])
             through = value_of(nominal, flow)
-            carried = full / through + coarse[key] / coarse[flow] - base[key] / base[flow]
-            rows.append(carried * through * coarse[flow] / base[flow])
+            carried = full / through + moved[key] / moved[flow] - base[key] / base[flow]
+            rows.append(carried * through * moved[flow] / base[flow])
         else:
-            rows.append(full * coarse[key] / base[key])
-    return np.array(rows).reshape(len(rows), -1)
+            rows.append(full * moved[key] / base[key])
+    return np.array(rows)
 
 
-def _with_method(key: Key, values: Array, nominal: Array, errors: Array, z: Array) -> Array:
+def _with_method(key: Key, values: Array, nominals: list[CollisionRates], errors: Array, z: Array) -> Array:
     """Samples (m, n) with the method error (m, n) [1] of this rate added (signed rates) or multiplied on."""
-    if key[0] in SIGNED:
-        return values + errors * np.abs(nominal) * z
-    return values * np.exp(log_sd(errors) * z)
+    if key[0] not in SIGNED:
+        return values * np.exp(log_sd(errors) * z)
+    size = np.array([np.abs(value_of(nominal, key)) for nominal in nominals]).reshape(values.shape)
+    return values + errors * size * z
 
 
 def _whole(name: str, value: Any, low: int, high: int) -> int:

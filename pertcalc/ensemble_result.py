@@ -46,7 +46,7 @@ class Ensemble:
     z : ndarray, shape (m, d)
         Standard normal inputs of the finished members [1].
     chosen : ndarray of int, shape (m,)
-        Which of `sets` every member has.
+        Which of `sets` every member has [1].
     sets : tuple of str
         Ids of the curve sets.
     samples : mapping

@@ -94,7 +94,7 @@ def draw(
     z : ndarray, shape (m, n)
         Standard normal inputs, correlated as the chosen set states [1].
     chosen : ndarray of int, shape (m,)
-        Index of the set.
+        Index of the set [1].
 
     Source
     ------
