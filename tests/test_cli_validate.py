@@ -68,7 +68,7 @@ def test_a_failing_read_value_is_exit_4_after_everything_is_printed(monkeypatch)
     result = run()
     assert result.exit_code == 4
     assert result.stderr.startswith(
-        "Error: 1 check failed the stated tolerance:\n  - Na-Ne X De: expected 12, found 8.1"
+        "Error: 1 check failed the stated tolerance:\n  - Na-Ne X De: expected 12, found 7.57"
     )
     assert "FAILED: 1 of 27 gating checks" in result.stdout and "== Ours against measured" in result.stdout
     as_json = run("--json")

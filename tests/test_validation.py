@@ -13,6 +13,7 @@ import pytest
 
 from pertcalc import species
 from pertcalc.constants import HARTREE_CM1, KELVIN_HARTREE
+from pertcalc.curves.files import load_default
 from pertcalc.errors import DataFileError, PublishedCheckError, UnknownNameError
 from pertcalc.measured import QUANTITIES, measurements
 from pertcalc.report import validation_run
@@ -40,36 +41,46 @@ def test_only_read_values_gate_and_every_well_has_a_source_and_a_basis():
         assert well.mark != "READ" or "http" in well.source, "READ without an address"
 
 
+# Schwarzhans & Zimmermann 1997: 41.9(5) cm^-1, 5.01(2) A. Lapatovich 1980: X 8.1(9), 5.29(5); A 145(5), 2.70(5);
+# B 3.0(5), 7.62(16).
+PRINTED = {
+    ("Ar", "X"): (41.9, 0.5, 5.01, 0.02),
+    ("Ne", "X"): (8.1, 0.9, 5.29, 0.05),
+    ("Ne", "A"): (145.0, 5.0, 2.70, 0.05),
+    ("Ne", "B"): (3.0, 0.5, 7.62, 0.16),
+}
+
+
 def test_the_printed_wells_and_errors():
-    # Schwarzhans & Zimmermann 1997: 41.9(5) cm^-1, 5.01(2) A. Lapatovich 1980: X 8.1(9), 5.29(5); A 145(5), 2.70(5);
-    # B 3.0(5), 7.62(16).
-    printed = {
-        ("Ar", "X"): (41.9, 0.5, 5.01, 0.02),
-        ("Ne", "X"): (8.1, 0.9, 5.29, 0.05),
-        ("Ne", "A"): (145.0, 5.0, 2.70, 0.05),
-        ("Ne", "B"): (3.0, 0.5, 7.62, 0.16),
-    }
-    found = {
-        (well.noble_gas, well.state): (well.depth, well.depth_tolerance, well.position, well.position_tolerance)
-        for well in WELLS
-        if well.basis == "the printed error"
-    }
-    assert found == printed
+    found = {(well.noble_gas, well.state): well for well in reversed(WELLS) if well.alkali == "Na"}
+    for key, (De, De_error, Re, Re_error) in PRINTED.items():
+        well, state = found[key], load_default("Na", key[0]).states[key[1]]
+        assert (well.depth, well.position) == (De, Re)
+        if well.basis == "the printed error":  # the curve goes through the well
+            assert (well.depth_tolerance, well.position_tolerance) == (De_error, Re_error)
+            continue
+        # Computed without it: 1.5 times the printed error and that of the curve (of the published value) together.
+        for tolerance, value, error, name in (
+            (well.depth_tolerance, De, De_error, "De"),
+            (well.position_tolerance, Re, Re_error, "Re"),
+        ):
+            both = 1.5 * math.hypot(error, state.uncertainty[name] * (state.curve.well().depth * HARTREE_CM1
+                                    if name == "De" else value))  # fmt: skip
+            assert tolerance == pytest.approx(both, rel=0.1)
 
 
 def test_the_default_files_pass():
     checks = check_wells()
     assert failures(checks) == () and sum(check.gates for check in checks) == 14
-    # Not built on it, and known to lie outside: the model B curve of Na-Ar (notes/curves.md). Reported, not gating.
-    assert [check.name for check in checks if not check.passed] == ["Na-Ar B De"]
+    assert all(check.passed for check in checks)
 
 
 def test_a_wrong_read_well_fails_and_is_named():
-    wrong = dataclasses.replace(WELLS[0], depth=50.0)
+    wrong = dataclasses.replace(WELLS[0], depth=60.0)
     (failed,) = failures(check_wells((wrong, *WELLS[1:])))
-    assert failed.name == "Na-Ar X De" and failed.difference == pytest.approx(-8.1, abs=1e-3)
+    assert failed.name == "Na-Ar X De" and failed.difference == pytest.approx(failed.ours - 60.0, abs=1e-9)
     message = failure_message([failed])
-    for words in ("1 check failed", "Na-Ar X De", "expected 50", "found 41.9", "cm^-1", "READ"):
+    for words in ("1 check failed", "Na-Ar X De", "expected 60", "found 42.0", "cm^-1", "READ"):
         assert words in message
     with pytest.raises(PublishedCheckError) as caught:
         raise PublishedCheckError(message)
