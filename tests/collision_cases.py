@@ -68,6 +68,4 @@ def collide(pair: CollisionPair, path: str, energy: float, b, step_factor: float
     """S-matrices at one energy [hartree] and impact parameters b [bohr]."""
     family = PathFamily(pair, path)
     points = np.atleast_1d(np.asarray(b, dtype=float))
-    return scatter(
-        family, np.full(points.size, energy), points, family.turning_points(energy, points), step_factor
-    )
+    return scatter(family, np.full(points.size, energy), points, family.turning_points(energy, points), step_factor)

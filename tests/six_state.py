@@ -95,9 +95,7 @@ def newton_path(pair: SlowPair, path: str, energy: float, b: float, R_end: float
 
     far.terminal = True
     R0 = turning_point(pair, path, energy, b)
-    out = solve_ivp(
-        motion, (0, 1e9), [R0, 0.0, 0.0], "DOP853", events=far, rtol=rtol, atol=1e-12, dense_output=True
-    )
+    out = solve_ivp(motion, (0, 1e9), [R0, 0.0, 0.0], "DOP853", events=far, rtol=rtol, atol=1e-12, dense_output=True)
     t = np.unique(np.concatenate([np.linspace(*step, 20) for step in zip(out.t[:-1], out.t[1:], strict=True)]))
     R, _, phi = out.sol(t)
     table = np.stack([np.asarray(pair.B(R)), np.asarray(pair.A(R)), np.asarray(pair.X(R)), phi], axis=-1)

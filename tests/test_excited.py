@@ -6,7 +6,7 @@ from dataclasses import replace
 
 import pytest
 
-from pertcalc.species import alkali
+from pertcalc.species import Sourced, alkali
 from pertcalc.vapour.excited import COLLISIONS, DECAY, FIELD, model_rates, rank_balance
 from pertcalc.vapour.fill import Fill, hanle_field_G
 from pertcalc.vapour.level_rates import LevelRates, free_rates, level_rates
@@ -15,6 +15,7 @@ from tests.report_fakes import fake_rates
 RB = alkali("Rb")
 FILL = Fill(20.0, 293.15, 333.15, 0.5)
 G_J = 4 / 3
+WITH_G_J = Sourced(G_J, "1", "Lande factor of J = 3/2", "COMPUTED")
 
 
 def rates_at(fill: Fill) -> LevelRates:
@@ -22,7 +23,7 @@ def rates_at(fill: Fill) -> LevelRates:
 
 
 def balance(fill: Fill = FILL, rank: int = 2):
-    return rank_balance(RB, "P3/2", rank, rates_at(fill), 0.2, G_J, "g_J", fill)
+    return rank_balance(RB, "P3/2", rank, rates_at(fill), 0.2, WITH_G_J, "g_J", fill)
 
 
 def test_collisions_equal_decay_at_the_crossover_pressure() -> None:
@@ -57,7 +58,7 @@ def test_hanle_field_of_free_caesium_and_sodium() -> None:
     """2.81 G and 5.25 G for P3/2 with g_J (lifetimes FROM MEMORY behind them: Hanle fields of the free D2 levels)."""
     for symbol, field in (("Cs", 2.81), ("Na", 5.25)):
         record = alkali(symbol)
-        free = rank_balance(record, "P3/2", 2, free_rates(record), None, G_J, "g_J", FILL, has_gas=False)
+        free = rank_balance(record, "P3/2", 2, free_rates(record), None, WITH_G_J, "g_J", FILL, has_gas=False)
         assert free.hanle_G == pytest.approx(field, abs=0.015)
         assert free.crossover_pressure_torr is None
         assert free.dominant == DECAY

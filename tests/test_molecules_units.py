@@ -22,6 +22,8 @@ from pertcalc.molecules.molecule import molecule
 from pertcalc.molecules.near_dissociation import near_dissociation
 from pertcalc.molecules.quasibound import quasibound_levels
 from pertcalc.molecules.radial import deformed_potentials, radial_problem, reduced_mass_of, state_problem
+from pertcalc.species import ALKALIS
+from tests.well_cases import through_well
 
 
 def with_x(curve, **changes):
@@ -74,8 +76,10 @@ def test_deformed_potentials_move_one_parameter_each():
     assert set(moved) == {"X De", "X Re", "X C6"}
     well = curves.X.well()
     deeper = moved["X De"][0](np.array([well.position]))[0]
-    assert -deeper / well.depth == pytest.approx(1 + 0.1, rel=0.01)
-    assert moved["X C6"][1] == pytest.approx(1.03 * curves.X.C6)
+    size = curves.states["X"].uncertainty
+    # 1/(1 + (1/1.5)^8) of the change arrives at the minimum (text of deform).
+    assert -deeper / well.depth == pytest.approx(1 + size["De"] / (1 + 1.5**-8), rel=1e-6)
+    assert moved["X C6"][1] == pytest.approx((1 + size["C6"]) * curves.X.C6)
     assert set(deformed_potentials(curves, "A1/2")) >= {"A De", "B C6"}
 
 
@@ -124,10 +128,10 @@ def test_two_wells_with_a_hump_hold_quasi_bound_levels_without_rotation():
 
 
 def test_reduced_masses_and_isotopes():
-    curves = load_default("Li", "He")
+    curves = through_well("Li", "He")
     m6, m3 = 6.0151228874, 3.0160293201  # atomic masses [u], FROM MEMORY (AME)
     assert reduced_mass_of(curves, m6, m3) == pytest.approx(m6 * m3 / (m6 + m3) * AMU_AU)
-    heavy, light = molecule("Li", "He"), molecule("Li", "He", isotopes=["6Li", "3He"])
+    heavy, light = (molecule("Li", "He", curves=curves, isotopes=i) for i in ((), ("6Li", "3He")))
     assert light.problem.reduced_mass < heavy.problem.reduced_mass
     assert light.problem.reduced_mass == pytest.approx(reduced_mass_of(curves, m6, m3), rel=1e-6)
     # Helium-3 is too light: no level; helium-4 holds one.
@@ -206,7 +210,11 @@ def test_tables_that_end_inside_the_well_are_refused():
 def test_levels_beyond_the_end_of_a_table_are_counted_in_a_warning():
     found = molecule("Rb", "Ar", "B")
     assert any("rest on its C_n tail" in warning for warning in found.warnings)
-    assert molecule("Rb", "Ar").warnings == ()
+    found = molecule("Rb", "Ar")
+    beyond = int(np.sum(found.levels.outer > found.curves.X.R[-1]))
+    assert beyond > 0 and any(f"{beyond} of {len(found.levels.v)} bound levels" in one for one in found.warnings)
+    # An analytic curve has no end.
+    assert molecule("Rb", "Ar", curves=through_well("Rb", "Ar")).warnings == ()
 
 
 def test_excited_pairs_get_an_equilibrium_only_where_it_means_something():
@@ -230,10 +238,29 @@ def test_fraction_and_times_follow_the_density():
 
 
 def test_default_curves_pass_the_check_of_tables():
-    for alkali in ("Li", "Cs"):
-        for gas in ("He", "Xe"):
+    for alkali in ALKALIS:
+        for gas in ("He", "Ne", "Ar", "Kr", "Xe"):
             for state in radial.STATES:
                 assert state_problem(load_default(alkali, gas), state).reduced_mass > 0
+
+
+def test_a_table_may_end_deep_in_its_well_where_its_tail_goes_on():
+    # A well of 0.8 cm^-1 far out: 1/3 of it is left at the last point, but C6 alone explains 90 % of that.
+    De, Re = 0.8 / HARTREE_CM1, 16.0
+
+    def table(end: float) -> Tabulated:
+        R = np.linspace(11.0, end, 60)
+        return Tabulated(R, De * ((Re / R) ** 12 - 2 * (Re / R) ** 6), C6=2 * De * Re**6)
+
+    whole = state_problem(with_x(table(21.6)), "X")
+    analytic = LennardJones(De, Re)
+    assert -float(analytic(21.6)) > radial.DEEP_END * De
+    direct = radial_problem(analytic, whole.reduced_mass, analytic.C6)
+    found, wanted = bound_levels(whole), bound_levels(direct)
+    assert np.array_equal(found.N, wanted.N) and len(found.v) > 1
+    assert found.energy[0] == pytest.approx(wanted.energy[0], rel=0.01)
+    with pytest.raises(DataFileError, match="end at R = 18 bohr inside"):
+        state_problem(with_x(table(18.0)), "X")
 
 
 @pytest.mark.slow

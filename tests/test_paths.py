@@ -102,7 +102,9 @@ def test_lennard_jones_orbits_below_four_fifths_of_the_well(x, orbits):
     if orbits:
         # Outermost barrier of the effective potential: the least b^2 at which it is as high as E.
         barrier = minimize_scalar(
-            lambda R: R**2 * (1 - well(R) / (x * well.De)), bounds=(8.0 * 1.05, 30.0), method="bounded",
+            lambda R: R**2 * (1 - well(R) / (x * well.De)),
+            bounds=(8.0 * 1.05, 30.0),
+            method="bounded",
             options={"xatol": 1e-9},
         )
         assert found[0] == pytest.approx(np.sqrt(barrier.fun), rel=1e-5)

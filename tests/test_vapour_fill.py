@@ -132,4 +132,3 @@ def test_every_broken_condition_is_named_in_one_error():
 
 def test_every_alkali_has_a_default_temperature():
     assert set(DEFAULT_TEMPERATURE_K) == set(ALKALIS)
-

@@ -41,10 +41,12 @@ _TOP = 1.0
 DEPTH = 36.0
 # A wall that stops a wave function less than exp(-THIN_WALL) is no wall.
 THIN_WALL = 8.0
-# A table ends inside the classically allowed region when its dispersion terms explain less than this part of its last
-# value (or more than the inverse), or when it stops deeper than DEEP_END of its well and the well holds a level at all.
+# A table ends inside the classically allowed region when its dispersion terms explain less than DISPERSION_SHARE of its
+# last value (or more than the inverse); when it stops deeper than DEEP_END of its well and the well holds more than one
+# level, they must explain CLOSE_SHARE of it: a shallow, far-out well may end deep and still go on as its tail.
 DISPERSION_SHARE = 0.5
 DEEP_END = 0.3
+CLOSE_SHARE = 0.9
 
 
 @dataclass(frozen=True, slots=True)
@@ -244,8 +246,9 @@ def _check_tables(curves: CurveSet, state: str, mu: float) -> None:
         well = curve.well()
         if V >= 0 or well is None:
             continue
-        continued = DISPERSION_SHARE * V >= dispersion >= V / DISPERSION_SHARE
-        if not continued or (-V > DEEP_END * well.depth and _levels_held(curve, mu) > 1):
+        deep = -V > DEEP_END * well.depth and _levels_held(curve, mu) > 1
+        share = CLOSE_SHARE if deep else DISPERSION_SHARE
+        if not share * V >= dispersion >= V / share:
             problems.append(
                 f"states.{name}.points end at R = {R:.4g} bohr inside the classically allowed region: V = "
                 f"{V * HARTREE_CM1:.4g} cm^-1 there ({-100 * V / well.depth:.0f} % of the well), of which C6, C8 and "

@@ -25,6 +25,7 @@ from pertcalc.molecules.levels import bound_levels
 from pertcalc.molecules.near_dissociation import near_dissociation
 from pertcalc.molecules.quasibound import quasibound_levels
 from pertcalc.molecules.radial import radial_problem, state_problem
+from tests.well_cases import through_well
 
 DEPTH = 100 / HARTREE_CM1
 
@@ -148,7 +149,7 @@ def test_langer_term_is_the_r6_correction_at_n_zero():
 
 
 def test_remark_names_the_rotation_where_ways_differ():
-    problem = state_problem(load_default("K", "Ar"), "X")
+    problem = state_problem(through_well("K", "Ar"), "X")
     counts = count_levels(problem, bound_levels(problem))
     assert np.array_equal(counts.spectral, counts.nodes)
     wrong = np.flatnonzero(counts.wkb != counts.nodes)
@@ -225,11 +226,15 @@ def test_error_estimate_bounds_the_true_error(fraction):
     assert 0 < true <= 3 * levels.numerical_error
 
 
-@pytest.mark.parametrize("state", ["X", "A3/2"])
+@pytest.mark.parametrize("state", ["X", "A3/2", "X table"])
 def test_levels_of_rotation_against_a_uniform_grid(state):
     # Colbert and Miller's sinc DVR on a uniform grid in R: nothing in common but the potential.
-    problem = state_problem(load_default("K", "Kr"), state)
+    curves = through_well("K", "Kr") if state == "X" else load_default("K", "Kr")
+    problem = state_problem(curves, state.split()[0])
     levels = bound_levels(problem)
+    # The knots of a table's spline limit the convergence: there the stated error counts.
+    tolerance = 3 * levels.numerical_error if state == "X table" else 1e-7 * problem.depth
+    assert tolerance < 1e-6 * problem.depth
     n = 500
     R = np.linspace(0.9 * problem.r_in, 30.0, n)
     i = np.subtract.outer(np.arange(n), np.arange(n))
@@ -239,7 +244,8 @@ def test_levels_of_rotation_against_a_uniform_grid(state):
         E = np.linalg.eigvalsh(T + np.diag(problem.effective(R, float(N))))
         ours = levels.energy[levels.N == N]
         deep = ours < -0.05 * problem.depth  # the uniform box ends at 30 bohr
-        assert np.abs(E[: deep.sum()] - ours[deep]).max() < 1e-7 * problem.depth
+        assert deep.sum() >= 2
+        assert np.abs(E[: deep.sum()] - ours[deep]).max() < tolerance
 
 
 def plain_phase_shift(problem, N: int, E: np.ndarray, end: float) -> np.ndarray:
@@ -263,7 +269,7 @@ def plain_phase_shift(problem, N: int, E: np.ndarray, end: float) -> np.ndarray:
     return np.unwrap(2 * np.arctan2(-(s2 - ratio * s1), c2 - ratio * c1)) / 2
 
 
-@pytest.mark.parametrize(("N", "v"), [(14, 7), (20, 6), (33, 4), (38, 3)])
+@pytest.mark.parametrize(("N", "v"), [(18, 7), (23, 6), (33, 4), (38, 3)])
 def test_quasibound_energy_and_width_against_the_phase_shift(rb_ar, N, v):
     # A resonance raises the phase by pi; d(delta)/dE has its peak at the level and its half maximum Gamma apart.
     problem, _, quasi = rb_ar
@@ -281,8 +287,12 @@ def test_ways_to_a_width_agree_where_both_hold(rb_ar):
     both = np.isfinite(quasi.width_delay) & ~quasi.by_delay
     assert both.sum() >= 8
     assert np.abs(quasi.width_delay[both] / quasi.width_flux[both] - 1).max() < 0.05
-    # WKB within 25 % over sixty orders of magnitude.
-    assert np.abs(np.log(quasi.width_wkb / quasi.width_flux)).max() < 0.25
+    # WKB within 25 % over sixty orders of magnitude; in the last per cent below the top of the barrier, where its two
+    # turning points meet, within a factor two.
+    ratio = np.abs(np.log(quasi.width_wkb / quasi.width_flux))
+    top = quasi.energy > 0.99 * quasi.barrier
+    assert 0 < top.sum() < 0.1 * len(top)
+    assert ratio[~top].max() < 0.25 and ratio.max() < np.log(2)
     assert quasi.width_flux.min() * HARTREE_CM1 < 1e-60
 
 

@@ -27,9 +27,7 @@ def van_der_waals(X: float, A: float, B: float, splitting: float) -> CollisionPa
     def curve(C6: float):
         return lambda R: -C6 / (R**6 + CORE**6)
 
-    return CollisionPair(
-        MASS, splitting, curve(X), curve(A), curve(B), ((B + 2 * A) / 3 - X, 0.0, 0.0), B - A
-    )
+    return CollisionPair(MASS, splitting, curve(X), curve(A), curve(B), ((B + 2 * A) / 3 - X, 0.0, 0.0), B - A)
 
 
 @pytest.mark.parametrize("C6", [300.0, -120.0])
