@@ -245,7 +245,7 @@ def test_default_curves_pass_the_check_of_tables():
 
 
 def test_a_table_may_end_deep_in_its_well_where_its_tail_goes_on():
-    # A well of 0.8 cm^-1 far out: 1/3 of it is left at the last point, but C6 alone explains 90 % of that.
+    # A well of 0.8 cm^-1 far out: more than 30 % of it is left at the last point, but C6 alone gives that within 10 %.
     De, Re = 0.8 / HARTREE_CM1, 16.0
 
     def table(end: float) -> Tabulated:
@@ -269,8 +269,15 @@ def test_spectrum_and_nodes_agree_for_every_default_curve(alkali):
     for gas in ("He", "Ne", "Ar", "Kr", "Xe"):
         for state in radial.STATES:
             problem = state_problem(load_default(alkali, gas), state)
-            counts = count_levels(problem, bound_levels(problem))
-            assert np.array_equal(counts.spectral, counts.nodes), f"{alkali}-{gas} {state}"
+            levels = bound_levels(problem)
+            counts = count_levels(problem, levels)
+            # They may differ by a level that the grid does not tell from the limit (Li-Ar A1/2: a crossing of A and B
+            # hardly avoided); then the output names the N.
+            for N in np.flatnonzero(counts.spectral != counts.nodes):
+                assert abs(counts.spectral[N] - counts.nodes[N]) == 1, f"{alkali}-{gas} {state}"
+                assert levels.energy[levels.N == N].max() > -3 * levels.numerical_error, f"{alkali}-{gas} {state}"
+                assert any(f"N = {N}:" in remark for remark in counts.remarks)
+            assert np.sum(counts.spectral != counts.nodes) <= 1
             assert counts.agree or counts.remarks
 
 

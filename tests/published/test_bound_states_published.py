@@ -30,7 +30,7 @@ def pairs():
 def test_one_level_in_every_alkali_helium_ground_curve(alkali):
     # READ: arXiv 2402.16209 ("1 predicted for every alkali-4He pair; binding single to tens of mK"); for Li-He also
     # Friedrich, Physics 6, 42 (2013). The binding is compared with the words' order of magnitude only, to within the
-    # error of the curve: half of it, or all for Li.
+    # error of the curve (50 mK).
     curves = load_default(alkali, "He")
     problem = state_problem(curves, "X")
     levels = bound_levels(problem, deformed=deformed_potentials(curves, "X"))
@@ -63,9 +63,9 @@ def test_equilibrium_constants_of_bound_plus_metastable_pairs(pairs, gas, publis
     assert abs(balance.total * ANGSTROM3 - published) < 2 * balance.model_error * balance.total * ANGSTROM3
 
 
-# An independent estimate with the curves of WELLS, not published: bound 54 and 120, metastable 29 and 61. The bound part
-# must agree; how many broad levels near the top of a barrier count as metastable is a matter of definition (ours: all,
-# in agreement with the classical constant: notes/pair-equilibrium.md), so the sum is only compared to 15 %.
+# An independent estimate with the curves of WELLS, not published: bound 54 and 120, metastable 29 and 61. The bound
+# part must agree; how many broad levels near the top of a barrier count as metastable is a matter of definition (ours:
+# all, in agreement with the classical constant: notes/pair-equilibrium.md), so the sum is only compared to 15 %.
 @pytest.mark.parametrize(("gas", "bound", "together"), [("Ar", 54.0, 83.0), ("Kr", 120.0, 180.0)])
 def test_constants_beside_an_independent_estimate(gas, bound, together):
     balance = molecule("Rb", gas, temperature=300.0, curves=through_well("Rb", gas)).equilibrium
