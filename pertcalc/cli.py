@@ -257,12 +257,14 @@ cli.add_command(verdict)
 )  # fmt: skip
 @method_option
 @click.option("--jobs", type=click.IntRange(min=1), help="Processes that share the pairs. [default: all processors]")
+@click.option("--plot", metavar="FILE", help="Also draw ours against measured, and pulls: FILE ends in .png or .svg.")
 @result_options
 def validate(
     everything: bool,
     quantities: tuple[str, ...],
     method: str,
     jobs: int | None,
+    plot: str | None,
     as_json: bool,
     as_csv: bool,
     output: str | None,
@@ -279,14 +281,31 @@ def validate(
         pertcalc validate --all --quantity fwhm --quantity shift -o widths.txt
     """
     one_format(as_json, as_csv)
-    check_targets(force, output)
+    check_targets(force, output, plot)
+    if plot is not None:
+        from pertcalc.report.curve_figures import figure_format
+
+        figure_format(plot)
     from pertcalc.report.compute import default_jobs
     from pertcalc.report.validation_run import validate as run
 
     with progress_bar("measured pairs") as progress:
         found = run(everything, quantities, method, jobs or default_jobs(), progress)
     deliver(_validation(found, as_json, as_csv), output, force)
+    if plot is not None:
+        _draw_validation(found, plot)
     end(found, found.failure())
+
+
+def _draw_validation(found: Any, plot: str) -> None:
+    """Write the figure; without a finished pair there is none, and the end of the command says why."""
+    from pertcalc.report.validation_figures import drawable, save_validation
+
+    if drawable(found.scores):
+        title = f"pertcalc {found.version} against published measurements, method {found.method}"
+        click.echo(f"wrote {save_validation(found.scores, plot, title)}", err=True)
+    else:
+        click.echo(f"{plot} not written: no measurement has a computed value beside it.", err=True)
 
 
 def _validation(found: Any, as_json: bool, as_csv: bool) -> str:
