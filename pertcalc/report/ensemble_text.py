@@ -56,7 +56,7 @@ def ensemble_lines(found: Ensemble) -> list[str]:
 
 def _table(found: Ensemble, rows: list[RateRow], at: int) -> list[str]:
     headers = ["", "", "comes from", "16 %", "84 %", "sd"]
-    return table(headers, [_cells(found, row, at) for row in rows], left=3)
+    return table(headers, [_cells(found, row, at) for row in rows], left=3, indent=0)
 
 
 def _cells(found: Ensemble, row: RateRow, at: int) -> list[str]:
