@@ -70,6 +70,16 @@ def test_bars_hold_the_errors_as_factors():
     assert "not estimated" in figure.axes[1].texts[0].get_text()
 
 
+def test_the_close_up_holds_every_width():
+    (inset,) = draw_validation(SCORES).axes[0].child_axes
+    widths = [one for one in SCORES if one.measurement.quantity == "fwhm"]
+    drawn = [(bars.lines[0].get_xdata()[0], bars.lines[0].get_ydata()[0]) for bars in inset.containers]
+    assert drawn == [(one.measurement.value, one.ours) for one in widths]
+    low, high = inset.get_xlim()
+    assert all(low < value < high for point in drawn for value in point) and "rad s$^{-1}$" in inset.get_title()
+    assert not draw_validation([one for one in SCORES if one not in widths]).axes[0].child_axes
+
+
 def test_opposite_signs_are_marked_and_only_they():
     left = draw_validation(SCORES).axes[0]
     marked = next(line for line in left.lines if line.get_label() == "opposite signs")

@@ -113,6 +113,32 @@ def _compare(axes: Axes, shown: Sequence[Score], total: int) -> None:
     axes.set_ylabel(f"ours, absolute value\n{units}")
     axes.set_title(f"{len(shown)} of {total} measured rows (a bound has no point)", fontsize=10)
     _legends(axes, shown)
+    _close_up(axes, [one for one in shown if one.measurement.quantity == "fwhm"])
+
+
+def _close_up(axes: Axes, widths: Sequence[Score]) -> None:
+    """The full widths again in the free corner: they lie within a factor 3, the whole panel spans many decades."""
+    from matplotlib.ticker import NullFormatter, ScalarFormatter
+
+    if len(widths) < 2:
+        return
+    inset = axes.inset_axes((0.5, 0.09, 0.34, 0.34))
+    inset.set_xscale("log")
+    inset.set_yscale("log")
+    sizes = [abs(value) for one in widths for value in (one.measurement.value, one.ours or math.nan)]
+    line = np.array([0.85 * min(sizes), 1.18 * max(sizes)])
+    inset.plot(line, line, color="black", linewidth=0.9, zorder=1)
+    for one in widths:
+        _point(inset, one, abs(one.measurement.value), abs(one.ours or math.nan))
+    inset.set_xlim(*line)
+    inset.set_ylim(*line)
+    for axis in (inset.xaxis, inset.yaxis):
+        axis.set_major_formatter(ScalarFormatter())
+        axis.set_minor_formatter(NullFormatter())
+        if line[1] < 30 * line[0]:
+            axis.set_ticks([t for t in (0.5, 1, 2, 3, 4, 5, 6, 8, 10, 20) if line[0] < t < line[1]])
+    inset.tick_params(labelsize=7)
+    inset.set_title(r"full widths [$10^{-9}$ rad s$^{-1}$ cm$^3$]", fontsize=8)
 
 
 def _point(axes: Axes, one: Score, x: float, y: float) -> None:
