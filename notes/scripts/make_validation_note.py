@@ -258,7 +258,8 @@ def text(found: Validation) -> str:
         where = "reached" if low <= share <= high else "above: our errors are too large" if share > high else "MISSED"
     by_quantity = {one.quantity: one for one in found.medians if one.noble_gas is None}
     reached = [
-        f"- {WORDS[q]}: median deviation {percent(by_quantity[q].median)} ({percent(by_quantity[q].median_good)} without "
+        f"- {WORDS[q]}: median deviation {percent(by_quantity[q].median)} ("
+        f"{percent(by_quantity[q].median_good)} without "
         f"grade low), goal {percent(goal)}: {verdict(by_quantity[q].median, goal)}."
         for q, goal in GOALS.items()
     ]
