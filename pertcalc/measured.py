@@ -6,14 +6,13 @@ notes/measured.md). They are compared against and reported; a row FROM MEMORY ma
 
 from __future__ import annotations
 
-import csv
 import math
 from dataclasses import dataclass
 from functools import cache
-from importlib.resources import files
 
 from pertcalc import constants
-from pertcalc.errors import DataFileError, InputError, UnknownNameError
+from pertcalc.errors import InputError, UnknownNameError
+from pertcalc.shipped import shipped_rows
 from pertcalc.species import Sourced, alkali_symbol, noble_gas_symbol
 
 QUANTITIES = ("fwhm", "shift", "transfer", "multipole_loss")
@@ -102,24 +101,7 @@ def as_rate(measurement: Measurement, reduced_mass_au: float) -> Sourced:
 @cache
 def _all() -> tuple[Measurement, ...]:
     """Return the rows of all tables, in the tables' order."""
-    return tuple(row for name in TABLES for row in _read(name))
-
-
-def _read(name: str) -> list[Measurement]:
-    """Return the rows of one table; lines that start with '#' are its header."""
-    path = files("pertcalc") / "data" / "measured" / name
-    try:
-        lines = path.read_text(encoding="utf-8").splitlines()
-    except OSError as problem:
-        raise DataFileError(path, f"{problem}; reinstall pertcalc") from problem
-    reader = csv.DictReader(line for line in lines if not line.startswith("#"))
-    rows = []
-    for number, cells in enumerate(reader, start=1):
-        try:
-            rows.append(_row(cells))
-        except (KeyError, TypeError, ValueError) as problem:
-            raise DataFileError(path, f"row {number}: {problem!r}; reinstall pertcalc") from problem
-    return rows
+    return tuple(row for name in TABLES for row in shipped_rows("measured", name, _row))
 
 
 def _row(cells: dict[str, str]) -> Measurement:

@@ -16,6 +16,7 @@ PACKAGE = Path(__file__).parents[1] / "pertcalc"
 LAYERS = [
     "errors",
     "names",
+    "shipped",
     "constants",
     "units",  # words -> numbers
     "angular",

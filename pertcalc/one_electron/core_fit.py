@@ -6,12 +6,10 @@ and `solve_atom` (atom.py).
 
 from __future__ import annotations
 
-import csv
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cache
-from importlib.resources import files
 
 import numpy as np
 from numpy.typing import NDArray
@@ -19,9 +17,10 @@ from scipy.linalg import eigh
 from scipy.optimize import brentq
 
 from pertcalc.constants import HARTREE_CM1
-from pertcalc.errors import DataFileError, InputError, NotConvergedError
+from pertcalc.errors import InputError, NotConvergedError
 from pertcalc.one_electron.core import LETTERS, CorePotential
 from pertcalc.one_electron.radial_basis import RadialBasis, bspline_basis
+from pertcalc.shipped import shipped_rows
 from pertcalc.species import alkali_symbol
 
 Array = NDArray[np.float64]
@@ -223,13 +222,8 @@ def _check(symbol: str, terms: Sequence[Term], ionisation_cm1: float, polarizabi
 @cache
 def _table() -> dict[str, list[dict[str, str]]]:
     """Rows of terms.csv by alkali."""
-    path = files("pertcalc") / "data" / "one_electron" / "terms.csv"
-    try:
-        lines = path.read_text(encoding="utf-8").splitlines()
-    except OSError as problem:
-        raise DataFileError(path, f"{problem}; reinstall pertcalc") from problem
     rows: dict[str, list[dict[str, str]]] = {}
-    for row in csv.DictReader(line for line in lines if not line.startswith("#")):
+    for row in shipped_rows("one_electron", "terms.csv", dict):
         rows.setdefault(row["alkali"], []).append(row)
     return rows
 

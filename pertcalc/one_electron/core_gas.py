@@ -6,12 +6,10 @@ by the electron is. Wells: ``pertcalc/data/one_electron/ion_gas.csv``; notes/cor
 
 from __future__ import annotations
 
-import csv
 import math
 from collections.abc import Callable
 from dataclasses import dataclass
 from functools import cache
-from importlib.resources import files
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -19,8 +17,9 @@ from scipy.optimize import brentq
 from scipy.special import gammainc
 
 from pertcalc import constants
-from pertcalc.errors import DataFileError, InputError, OutOfRangeError
+from pertcalc.errors import InputError, OutOfRangeError
 from pertcalc.one_electron.gas_electron import GasElectron, gas_electron
+from pertcalc.shipped import shipped_rows
 from pertcalc.species import COMPUTED, Sourced, alkali, alkali_symbol, noble_gas, noble_gas_symbol
 
 Array = NDArray[np.float64]
@@ -229,13 +228,7 @@ def _closest(Re: float, energy: Callable[[Array], Array]) -> float:
 
 @cache
 def _wells() -> dict[tuple[str, str], IonWell]:
-    path = files("pertcalc") / "data" / "one_electron" / "ion_gas.csv"
-    try:
-        lines = path.read_text(encoding="utf-8").splitlines()
-        rows = csv.DictReader(line for line in lines if not line.startswith("#"))
-        return {(row["alkali"], row["gas"]): _ion_well(row) for row in rows}
-    except (OSError, KeyError, TypeError, ValueError) as problem:
-        raise DataFileError(path, f"{problem!r}; reinstall pertcalc") from problem
+    return dict(shipped_rows("one_electron", "ion_gas.csv", lambda row: ((row["alkali"], row["gas"]), _ion_well(row))))
 
 
 def _ion_well(row: dict[str, str]) -> IonWell:

@@ -5,11 +5,9 @@ The table is ``pertcalc/data/one_electron/phase_shifts.csv``; notes/electron-gas
 
 from __future__ import annotations
 
-import csv
 from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cache
-from importlib.resources import files
 
 import numpy as np
 from numpy.typing import NDArray
@@ -17,6 +15,7 @@ from numpy.typing import NDArray
 from pertcalc import constants
 from pertcalc.errors import DataFileError
 from pertcalc.one_electron.scattering import Scatterer, cross_sections, phase_shifts, scattering_length
+from pertcalc.shipped import shipped_rows
 from pertcalc.species import GASES, noble_gas_symbol
 
 Array = NDArray[np.float64]
@@ -96,16 +95,13 @@ def predicted(gas: Scatterer, data: Sequence[ScatteringDatum]) -> tuple[Array, A
 
 @cache
 def _all() -> tuple[ScatteringDatum, ...]:
-    path = files("pertcalc") / "data" / "one_electron" / "phase_shifts.csv"
-    try:
-        lines = path.read_text(encoding="utf-8").splitlines()
-        rows = csv.DictReader(line for line in lines if not line.startswith("#"))
-        found = tuple(_datum(row) for row in rows)
-    except (OSError, KeyError, TypeError, ValueError) as problem:
-        raise DataFileError(path, f"{problem!r}; reinstall pertcalc") from problem
+    table = "phase_shifts.csv"
+    found = shipped_rows("one_electron", table, _datum)
     bad = [f"{one.gas} {one.quantity}" for one in found if one.quantity not in QUANTITIES or one.gas not in GASES]
     if bad:
-        raise DataFileError(path, [f"{name}: unknown gas or quantity; reinstall pertcalc" for name in bad])
+        raise DataFileError(
+            "phase_shifts.csv", [f"{name}: unknown gas or quantity; reinstall pertcalc" for name in bad]
+        )
     return found
 
 

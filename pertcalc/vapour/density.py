@@ -8,16 +8,15 @@ notes/vapour-density.md.
 
 from __future__ import annotations
 
-import csv
 import math
 from dataclasses import dataclass
 from functools import cache
-from importlib.resources import files
 from numbers import Real
 
 from pertcalc import species
 from pertcalc.constants import BOLTZMANN_J_K, TORR_PA
-from pertcalc.errors import DataFileError, InputError, OutOfRangeError
+from pertcalc.errors import InputError, OutOfRangeError
+from pertcalc.shipped import shipped_rows
 from pertcalc.species import Sourced
 
 SOLID, LIQUID = "solid", "liquid"
@@ -169,12 +168,7 @@ def _evaluated(
 
 @cache
 def _all() -> tuple[Formula, ...]:
-    path = files("pertcalc") / "data" / "vapour" / "vapour_pressure.csv"
-    try:
-        lines = path.read_text(encoding="utf-8").splitlines()
-        return tuple(_formula(cells) for cells in csv.DictReader(line for line in lines if not line.startswith("#")))
-    except (OSError, KeyError, TypeError, ValueError) as problem:
-        raise DataFileError(path, f"{problem!r}; reinstall pertcalc") from problem
+    return shipped_rows("vapour", "vapour_pressure.csv", _formula)
 
 
 def _formula(cells: dict[str, str]) -> Formula:

@@ -7,12 +7,10 @@ Measured: ``pertcalc/data/vapour/diffusion.csv`` (made by notes/scripts/make_vap
 
 from __future__ import annotations
 
-import csv
 import math
 from collections.abc import Callable
 from dataclasses import dataclass, replace
 from functools import cache
-from importlib.resources import files
 from numbers import Real
 
 import numpy as np
@@ -34,8 +32,9 @@ from pertcalc.constants import AMU_AU, AU_TIME_S, BOHR2_ANGSTROM2, BOHR_CM, BOLT
 from pertcalc.curves.curveset import CurveSet
 from pertcalc.curves.deform import PARAMETERS
 from pertcalc.curves.files import for_pair, load_default
-from pertcalc.errors import DataFileError, InputError, OutOfRangeError, UnknownNameError
+from pertcalc.errors import InputError, OutOfRangeError, UnknownNameError
 from pertcalc.model_error import deformed_pair
+from pertcalc.shipped import shipped_rows
 from pertcalc.species import COMPUTED, READ, Sourced
 
 Array = NDArray[np.float64]
@@ -268,12 +267,7 @@ def _chosen(computed: Sourced, measured: tuple[MeasuredDiffusion, ...]) -> tuple
 
 @cache
 def _all() -> tuple[MeasuredDiffusion, ...]:
-    path = files("pertcalc") / "data" / "vapour" / "diffusion.csv"
-    try:
-        lines = path.read_text(encoding="utf-8").splitlines()
-        return tuple(_row(cells) for cells in csv.DictReader(line for line in lines if not line.startswith("#")))
-    except (OSError, KeyError, TypeError, ValueError) as problem:
-        raise DataFileError(path, f"{problem!r}; reinstall pertcalc") from problem
+    return shipped_rows("vapour", "diffusion.csv", _row)
 
 
 def _row(cells: dict[str, str]) -> MeasuredDiffusion:

@@ -6,14 +6,13 @@ bounds are known: the answer is None). Data: ``pertcalc/data/vapour/quenching.cs
 
 from __future__ import annotations
 
-import csv
 import math
 from dataclasses import dataclass
 from functools import cache
-from importlib.resources import files
 
 from pertcalc import constants
-from pertcalc.errors import DataFileError, InputError, UnknownNameError
+from pertcalc.errors import InputError, UnknownNameError
+from pertcalc.shipped import shipped_rows
 from pertcalc.species import COMPUTED, Alkali, Sourced, alkali_symbol, noble_gas
 from pertcalc.thermal import mean_speed
 from pertcalc.vapour.level_rates import P_LEVELS
@@ -188,14 +187,8 @@ def _speed_cm_s(alkali: Alkali, gas: str, temperature: float) -> float:
 
 @cache
 def _all() -> tuple[Quenching, ...]:
-    """Return every row of the table; lines that start with '#' are its header."""
-    path = files("pertcalc") / "data" / "vapour" / "quenching.csv"
-    try:
-        lines = path.read_text(encoding="utf-8").splitlines()
-        rows = csv.DictReader(line for line in lines if not line.startswith("#"))
-        return tuple(_row(cells) for cells in rows)
-    except (OSError, KeyError, TypeError, ValueError) as problem:
-        raise DataFileError(path, f"{problem!r}; reinstall pertcalc") from problem
+    """Return every row of the table."""
+    return shipped_rows("vapour", "quenching.csv", _row)
 
 
 def _row(cells: dict[str, str]) -> Quenching:

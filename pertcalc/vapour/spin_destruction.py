@@ -7,17 +7,15 @@ rate G = n k, k = sigma vbar. Units: cm^2, cm^3/s, K.
 
 from __future__ import annotations
 
-import csv
 import math
-from collections.abc import Callable
 from dataclasses import dataclass, replace
 from functools import cache
-from importlib.resources import files
 from typing import TypeVar
 
 from pertcalc import species
 from pertcalc.constants import AMU_AU, AU_VELOCITY_CM_S
-from pertcalc.errors import DataFileError, InputError, UnknownNameError
+from pertcalc.errors import InputError, UnknownNameError
+from pertcalc.shipped import shipped_rows
 from pertcalc.species import Sourced
 from pertcalc.thermal import mean_speed
 from pertcalc.vapour.process import weakest_mark
@@ -230,13 +228,13 @@ def _distance(row: SpinRow, temperature_K: float) -> float:
 @cache
 def _rows() -> tuple[SpinRow, ...]:
     numbers = ("value", "error", "temperature_K", "low_K", "high_K", "exponent")
-    return _read("spin_destruction.csv", lambda c: SpinRow(**_typed(c, numbers)))  # type: ignore[arg-type]
+    return shipped_rows("vapour", "spin_destruction.csv", lambda c: SpinRow(**_typed(c, numbers)))  # type: ignore[arg-type]
 
 
 @cache
 def _pairs() -> tuple[BoundPair, ...]:
     numbers = ("coupling_MHz", "lifetime_torr_s", "equilibrium_cm3", "temperature_K")
-    return _read("pairs.csv", lambda c: BoundPair(**_typed(c, numbers)))  # type: ignore[arg-type]
+    return shipped_rows("vapour", "pairs.csv", lambda c: BoundPair(**_typed(c, numbers)))  # type: ignore[arg-type]
 
 
 def _typed(cells: dict[str, str], numbers: tuple[str, ...]) -> dict[str, object]:
@@ -246,13 +244,3 @@ def _typed(cells: dict[str, str], numbers: tuple[str, ...]) -> dict[str, object]
     if "year" in cells:
         typed["year"] = int(cells["year"]) if cells["year"] else None
     return typed
-
-
-def _read(name: str, make: Callable[[dict[str, str]], _T]) -> tuple[_T, ...]:
-    """Return the rows of one table; lines that start with '#' are its header."""
-    path = files("pertcalc") / "data" / "vapour" / name
-    try:
-        lines = path.read_text(encoding="utf-8").splitlines()
-        return tuple(make(cells) for cells in csv.DictReader(line for line in lines if not line.startswith("#")))
-    except (OSError, KeyError, TypeError, ValueError) as problem:
-        raise DataFileError(path, f"{problem!r}; reinstall pertcalc") from problem
